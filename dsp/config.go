@@ -45,4 +45,7 @@ type Point struct {
 	// HighpassHz is the corner of the chain's first-order high pass, Hz,
 	// corrected in amplitude and phase; 0 means none.
 	HighpassHz float64
+	// FullScaleV is the voltage at which the chain saturates, either way from
+	// zero, volts; 0 means unknown, and only flat tops tell of clipping.
+	FullScaleV float64
 }

@@ -1,0 +1,163 @@
+package dsp
+
+import "math"
+
+// A part is a few whole turns, long enough for a least-squares fit.
+type part struct {
+	centre float64 // middle, rows
+	length float64 // rows
+	turns  int
+	// vector holds, for each point, the complex amplitudes of the signal in
+	// volts peak, one an order: x = Re(sum vector[n] * exp(i*(n+1)*theta)).
+	vector [][Orders]complex128
+	// level is each point's constant, volts.
+	level []float64
+	// orders is how many orders the sample rate allowed, the rest are zero.
+	orders int
+}
+
+// fitter collects turns into parts and fits each part.
+type fitter struct {
+	buf      *rows
+	channels []int // one a point
+	minRows  float64
+	done     func(*part)
+
+	pending []turn
+	table   []trig
+	out     part
+}
+
+// trig holds the cosines and sines of a row's shaft angle, orders 1 to 3.
+type trig struct{ c1, s1, c2, s2, c3, s3 float64 }
+
+const (
+	// partSeconds is the least length of a part. A quarter of a second keeps
+	// neighbours up to 2 Hz away apart from 1x in the sequence of parts.
+	partSeconds = 0.25
+	// partRows is the least number of rows of a part, several an unknown.
+	partRows = 64
+	// topOrder is the share of the sample rate up to which an order is fitted.
+	topOrder = 0.45
+)
+
+func newFitter(cfg *Config, buf *rows, done func(*part)) *fitter {
+	f := &fitter{
+		buf: buf, done: done,
+		minRows: max(partSeconds*cfg.RateHz, partRows),
+		pending: make([]turn, 0, 256),
+		table:   make([]trig, 0, buf.keep),
+	}
+	for _, p := range cfg.Points {
+		f.channels = append(f.channels, p.Channel)
+	}
+	f.out.vector = make([][Orders]complex128, len(f.channels))
+	f.out.level = make([]float64, len(f.channels))
+	return f
+}
+
+// turn adds a turn that follows the one before.
+func (f *fitter) turn(t turn) {
+	if n := len(f.pending); n > 0 && f.pending[n-1].end != t.start {
+		f.broken()
+	}
+	f.pending = append(f.pending, t)
+	if t.end-f.pending[0].start >= f.minRows {
+		f.fit()
+	}
+}
+
+// broken tells that the next turn does not follow the last.
+func (f *fitter) broken() {
+	n := len(f.pending)
+	if n > 0 && f.pending[n-1].end-f.pending[0].start >= f.minRows/2 {
+		f.fit()
+	}
+	f.pending = f.pending[:0]
+}
+
+// fit solves the pending turns and hands the part on.
+func (f *fitter) fit() {
+	first, last := f.pending[0].start, f.pending[len(f.pending)-1].end
+	p := &f.out
+	p.centre, p.length, p.turns = (first+last)/2, last-first, len(f.pending)
+	p.orders = min(Orders, int(topOrder*p.length/float64(p.turns)))
+	start := max(int64(math.Ceil(first)), f.buf.base)
+	var c, s [2*Orders + 1]float64
+	f.table = f.table[:0]
+	row := start
+	for _, t := range f.pending {
+		row = f.angles(row, t, &c, &s)
+	}
+	f.pending = f.pending[:0]
+	m := 1 + 2*p.orders
+	var a normal
+	a.build(m, &c, &s)
+	if p.orders < 1 || !a.factor(m) {
+		return
+	}
+	x := f.buf.from(start)
+	for i, ch := range f.channels {
+		y := f.project(x[ch:])
+		a.solve(m, &y)
+		p.level[i] = y[0]
+		for n := range p.orders {
+			p.vector[i][n] = complex(y[2*n+1], -y[2*n+2])
+		}
+		for n := p.orders; n < Orders; n++ {
+			p.vector[i][n] = 0
+		}
+	}
+	f.done(p)
+}
+
+// angles tables the rows of one turn from row on, adds them to the sums c and
+// s of cosines and sines, and returns the row after them.
+func (f *fitter) angles(row int64, t turn, c, s *[2*Orders + 1]float64) int64 {
+	step := 2 * math.Pi / (t.end - t.start)
+	sin, cos := math.Sincos((float64(row) - t.start) * step)
+	ds, dc := math.Sincos(step)
+	end := int64(math.Ceil(t.end))
+	c[0] += float64(end - row)
+	for ; row < end; row++ {
+		// Double and triple angles; the recurrence starts anew each turn, so
+		// that rounding does not build up.
+		c2, s2 := 2*cos*cos-1, 2*sin*cos
+		c3, s3 := cos*c2-sin*s2, sin*c2+cos*s2
+		f.table = append(f.table, trig{cos, sin, c2, s2, c3, s3})
+		c[1] += cos
+		s[1] += sin
+		c[2] += c2
+		s[2] += s2
+		c[3] += c3
+		s[3] += s3
+		c[4] += 2*c2*c2 - 1
+		s[4] += 2 * s2 * c2
+		c[5] += c2*c3 - s2*s3
+		s[5] += s2*c3 + c2*s3
+		c[6] += 2*c3*c3 - 1
+		s[6] += 2 * s3 * c3
+		cos, sin = cos*dc-sin*ds, sin*dc+cos*ds
+	}
+	return row
+}
+
+// project returns the products of a channel's samples, the first of which is
+// x[0], with the columns of the fit.
+func (f *fitter) project(x []float32) (y [unknowns]float64) {
+	stride, at := f.buf.stride, 0
+	var k, c1, s1, c2, s2, c3, s3 float64
+	for i := range f.table {
+		t := &f.table[i]
+		v := float64(x[at])
+		at += stride
+		k += v
+		c1 += v * t.c1
+		s1 += v * t.s1
+		c2 += v * t.c2
+		s2 += v * t.s2
+		c3 += v * t.c3
+		s3 += v * t.s3
+	}
+	return [unknowns]float64{k, c1, s1, c2, s2, c3, s3}
+}
