@@ -21,18 +21,17 @@ type pulses struct {
 	armed bool  // the signal has been behind the threshold by the hysteresis
 	start int64 // the first row over the threshold of the pulse under way
 	high  bool  // a pulse is under way
+	end   int64 // the first row behind the last pulse
 	peak  float64
 	// top is the level of the pulses, width their width in rows; 0 until a
 	// pulse has been seen whole.
 	top, width float64
-	// baseline is the level between pulses, learnt before each edge.
-	baseline float64
 }
 
 const (
-	rowsBefore = 3 // rows ahead of the crossing that belong to a sharp edge
+	rowsBefore = 2 // rows ahead of the crossing that a sharp edge reaches into
 	rowsAfter  = 2 // rows after it
-	lowRows    = 5 // rows ahead of those that give the low level
+	lowRows    = 6 // rows ahead of those that give the low level, if there are
 	// settled is the share of the pulse height within which a level counts as
 	// reached.
 	settled = 0.1
@@ -49,7 +48,7 @@ func newPulses(ref Reference) *pulses {
 }
 
 // restart forgets the pulse under way, after a gap; at is the next row.
-func (p *pulses) restart(at int64) { p.next, p.armed, p.high = at, false, false }
+func (p *pulses) restart(at int64) { p.next, p.armed, p.high, p.end = at, false, false, at-1 }
 
 // scan looks at the rows not seen yet, as far as an edge could be located, and
 // calls found with each edge's place on the sample clock in rows.
@@ -79,18 +78,10 @@ func (p *pulses) at(b *rows, row int64) float64 {
 // locate returns the place of the edge whose first row over the threshold is i.
 func (p *pulses) locate(b *rows, i int64) float64 {
 	linear := p.crossing(b, i)
-	if i-rowsBefore-lowRows < b.base {
+	if i-rowsBefore-1 < b.base {
 		return linear
 	}
-	low := 0.0
-	for k := i - rowsBefore - lowRows; k < i-rowsBefore; k++ {
-		low += p.at(b, k)
-	}
-	low /= lowRows
-	if low > p.thr-p.hys {
-		low = p.baseline // the previous pulse ended only just before
-	}
-	p.baseline = low
+	low := p.lowLevel(b, i)
 	after := int64(rowsAfter)
 	if p.width > 0 && p.width < 5 {
 		after = 1 // the trailing edge comes too soon for more
@@ -115,6 +106,19 @@ func (p *pulses) locate(b *rows, i int64) float64 {
 	return edge
 }
 
+// lowLevel returns the level between the last pulse's end and the edge at i.
+func (p *pulses) lowLevel(b *rows, i int64) float64 {
+	sum, n := 0.0, 0
+	for k := max(b.base, p.end+1, i-rowsBefore-lowRows); k < i-rowsBefore; k++ {
+		sum += p.at(b, k)
+		n++
+	}
+	if n == 0 {
+		return p.at(b, i-rowsBefore)
+	}
+	return sum / float64(n)
+}
+
 // crossing interpolates the threshold between the rows i-1 and i.
 func (p *pulses) crossing(b *rows, i int64) float64 {
 	y1 := p.at(b, i)
@@ -130,7 +134,7 @@ func (p *pulses) crossing(b *rows, i int64) float64 {
 
 // finish learns the level and the width from the pulse that ends at p.next.
 func (p *pulses) finish(b *rows) {
-	p.high = false
+	p.high, p.end = false, p.next
 	width := float64(p.next - p.start)
 	level, n := 0.0, 0
 	for k := max(p.start+rowsAfter, b.base); k < p.next-rowsBefore; k++ {
