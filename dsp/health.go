@@ -36,9 +36,11 @@ const (
 	// of its minute is over this share of its 1x and over this many mm/s.
 	noisyShare = 0.3
 	noisyFloor = 0.5
-	// restless is the scatter of a sensor's constant, g, over the parts of a
-	// minute from which its connection must be doubted.
-	restless = 0.1
+	// restless and restlessShare: a sensor's connection must be doubted when its
+	// constant scatters from part to part by more than the first, g, and by more
+	// than this share of the whole swing of the signal.
+	restless      = 0.1
+	restlessShare = 0.1
 )
 
 // look examines the rows of a part for flat tops.
@@ -101,7 +103,7 @@ func (h *health) clear() { clear(h.flat) }
 func (e *Engine) state(i int) PointState {
 	c := &e.band.chain[i]
 	cfg := &e.cfg.Points[i]
-	swing := float64(c.high) - float64(c.low)
+	swing := c.high - c.low
 	switch {
 	case e.band.seen == 0:
 		return PointFlat
@@ -133,5 +135,7 @@ func (e *Engine) restless(i int) bool {
 		d := level[k] - level[k-1]
 		sum += d * d / 2
 	}
-	return math.Sqrt(sum/float64(len(level)-1)) > restless*e.cfg.Points[i].VoltsPerG
+	scatter := math.Sqrt(sum / float64(len(level)-1))
+	c := &e.band.chain[i]
+	return scatter > max(restless*e.cfg.Points[i].VoltsPerG, restlessShare*(c.high-c.low))
 }

@@ -2,7 +2,6 @@ package dsp
 
 import (
 	"math"
-	"math/cmplx"
 
 	"gonum.org/v1/gonum/dsp/fourier"
 )
@@ -18,12 +17,15 @@ type tracker struct {
 	window []float64
 	in     []float64
 	out    []complex128
-	power  []float64
+	power  []float64 // velocity, (mm/s rms) squared, summed over points
+	stands []float64 // power over the noise around, summed over points
+	point  []float64 // power of the signal of one point
 	sorted []float64
 
 	hop  int64
 	next int64   // row at which the next window ends
 	hz   float64 // of the last window; 0 while there is no line
+	seen float64 // a line seen once, not yet taken up; 0 = none
 	at   float64 // middle of the last window, rows
 	mark float64 // last mark, rows
 	// angle is the shaft angle at `at`, turns since the mark.
@@ -38,8 +40,16 @@ const (
 	lowestHz, highestHz = 1.0, 100.0
 	// trackShare is how far the speed may move from window to window.
 	trackShare = 0.1
-	// lineOver is how many times the median power a line must have.
-	lineOver = 30.0
+	// A line is taken up when it stands out from the noise around it by
+	// n + 4*sqrt(n) + 8 over n points, twice in a row at places that agree, and
+	// kept from n + 2*sqrt(n) + 2. In noise each point adds 1 on average and the
+	// largest of a hundred bins at one point is 5.
+	takeSD, takeOver = 4.0, 8.0
+	keepSD, keepOver = 2.0, 2.0
+	// noiseBins is the number of bins over which the noise is taken as level.
+	noiseBins = 16
+	// agree is how far the first two places of a line may differ, share.
+	agree = 0.03
 	// leastLine is the velocity, mm/s rms at the strongest point, under which
 	// a line is not taken for the machine's own turning.
 	leastLine = 0.1
@@ -60,13 +70,15 @@ func newTracker(cfg *Config, buf *rows) *tracker {
 	t.in = make([]float64, n)
 	t.out = make([]complex128, n/2+1)
 	t.power = make([]float64, n/2+1)
+	t.stands = make([]float64, n/2+1)
+	t.point = make([]float64, n/2+1)
 	t.sorted = make([]float64, n/2+1)
 	return t
 }
 
 // restart drops the line and waits for a window of new rows.
 func (t *tracker) restart() {
-	t.hz = 0
+	t.hz, t.seen = 0, 0
 	t.next = t.buf.end() + int64(len(t.window))
 	if kept := t.buf.base + int64(len(t.window)); t.buf.end() > kept {
 		t.next = t.buf.end()
@@ -84,7 +96,7 @@ func (t *tracker) scan(emit func(turn), lost func()) {
 			continue
 		}
 		middle := float64(t.next) - float64(len(t.window))/2
-		hz := t.line(t.next - int64(len(t.window)))
+		hz := t.take(t.line(t.next - int64(len(t.window))))
 		switch {
 		case hz == 0:
 			if t.hz != 0 {
@@ -98,6 +110,16 @@ func (t *tracker) scan(emit func(turn), lost func()) {
 		t.hz, t.at = hz, middle
 		t.next += t.hop
 	}
+}
+
+// take returns hz once a line has been seen there twice in a row.
+func (t *tracker) take(hz float64) float64 {
+	before := t.seen
+	t.seen = hz
+	if t.hz == 0 && math.Abs(hz-before) > agree*hz {
+		return 0
+	}
+	return hz
 }
 
 // advance passes on the turns between the last middle and this one, the turn
@@ -121,22 +143,30 @@ func (t *tracker) advance(middle, hz float64, emit func(turn)) {
 // or 0 when there is none.
 func (t *tracker) line(start int64) float64 {
 	clear(t.power)
-	strongest := 0.0
+	clear(t.stands)
 	low, high := t.limits()
-	for i := range t.cfg.Points {
-		strongest = max(strongest, t.add(start, i, low, high))
-	}
 	if high-low < 3 {
 		return 0
 	}
-	best := low
+	strongest := 0.0
+	for i := range t.cfg.Points {
+		strongest = max(strongest, t.add(start, i, low, high))
+	}
+	n := float64(len(t.cfg.Points))
+	over := n + takeSD*math.Sqrt(n) + takeOver
+	if t.hz > 0 {
+		over = n + keepSD*math.Sqrt(n) + keepOver
+		width := max(trackShare*t.hz, 6*t.binHz())
+		low = max(low, int((t.hz-width)/t.binHz()))
+		high = min(high, int((t.hz+width)/t.binHz())+2)
+	}
+	best := 0
 	for m := low; m < high; m++ {
-		if t.power[m] > t.power[best] {
+		if t.stands[m] > over && t.power[m] > t.power[best] {
 			best = m
 		}
 	}
-	all := t.sorted[:copy(t.sorted, t.power[low:high])]
-	if t.power[best] < lineOver*median(all) || strongest < leastLine || best == 0 {
+	if best == 0 || strongest < leastLine {
 		return 0
 	}
 	return (float64(best) + t.between(best)) * t.binHz()
@@ -154,16 +184,11 @@ func (t *tracker) between(m int) float64 {
 
 func (t *tracker) binHz() float64 { return t.cfg.RateHz / float64(len(t.window)) }
 
-// limits returns the bins to look in: around the line while there is one, else
-// around the rated speed.
+// limits returns the bins in which 1x can be.
 func (t *tracker) limits() (low, high int) {
 	from, to := lowestHz, highestHz
 	if t.cfg.RatedRPM > 0 {
 		from, to = lowestShare*t.cfg.RatedRPM/60, highestShare*t.cfg.RatedRPM/60
-	}
-	if t.hz > 0 {
-		width := max(trackShare*t.hz, 12*t.binHz())
-		from, to = max(from, t.hz-width), min(to, t.hz+width)
 	}
 	low = max(2, int(from/t.binHz()))
 	high = min(len(t.power)-1, int(math.Ceil(to/t.binHz()))+1)
@@ -185,14 +210,36 @@ func (t *tracker) add(start int64, point, low, high int) float64 {
 		t.in[i] = (t.in[i] - mean) * w
 	}
 	t.fft.Coefficients(t.out, t.in)
+	for m := low - 1; m <= high && m < len(t.out); m++ {
+		t.point[m] = sqAbs(t.out[m])
+	}
+	t.compare(low, high)
 	largest := 0.0
 	for m := low - 1; m <= high && m < len(t.out); m++ {
 		v := t.out[m] * toVelocity(t.cfg, point, float64(m)*t.binHz())
-		a := cmplx.Abs(v) * 4 / float64(len(t.in)) // 2/n, and 1/2 for the window's mean
-		t.power[m] += a * a
+		a := 4 / float64(len(t.in)) // 2/n, and 1/2 for the window's mean
+		power := sqAbs(v) * a * a
+		t.power[m] += power
 		if m >= low && m < high {
-			largest = max(largest, a)
+			largest = max(largest, power)
 		}
 	}
-	return largest
+	return math.Sqrt(largest)
 }
+
+// compare adds the point's power over the noise around each bin.
+func (t *tracker) compare(low, high int) {
+	for m := low; m < high; m += noiseBins {
+		end := min(high, m+noiseBins)
+		from := max(low, end-noiseBins)
+		level := median(t.sorted[:copy(t.sorted, t.point[from:end])]) / math.Ln2
+		if level == 0 {
+			continue
+		}
+		for k := m; k < end; k++ {
+			t.stands[k] += t.point[k] / level
+		}
+	}
+}
+
+func sqAbs(c complex128) float64 { return real(c)*real(c) + imag(c)*imag(c) }
