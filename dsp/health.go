@@ -5,7 +5,7 @@ import "math"
 // health gathers what tells whether a point's signal can be believed.
 type health struct {
 	flat []flatTops
-	// counter picks the parts that are looked at closely: each fourth.
+	// counter picks the parts that are looked at closely: each eighth.
 	counter int
 }
 
@@ -46,7 +46,7 @@ const (
 // look examines the rows of a part for flat tops.
 func (h *health) look(f *fitter, p *part) {
 	h.counter++
-	if h.counter%4 != 0 {
+	if h.counter%8 != 0 {
 		return
 	}
 	start := int64(math.Ceil(p.centre - p.length/2))
@@ -71,30 +71,41 @@ func hasFlat(x []float32, stride, n, run int) bool {
 	low, high := x[0], x[0]
 	for i := range n {
 		v := x[i*stride]
-		low, high = min(low, v), max(high, v)
+		if v < low {
+			low = v
+		}
+		if v > high {
+			high = v
+		}
 	}
 	band := (high - low) * flatBand
 	if band == 0 {
 		return false // flat altogether is another fault
 	}
-	top, bottom := 0, 0
-	for i := range n {
+	// A run shows at its first, middle and last sample at least, so looking at
+	// each (run-1)/2-th finds every one.
+	top, bottom := high-band, low+band
+	step := max(1, (run-1)/2)
+	for i := 0; i < n; i += step {
 		v := x[i*stride]
-		if v >= high-band {
-			top++
-		} else {
-			top = 0
-		}
-		if v <= low+band {
-			bottom++
-		} else {
-			bottom = 0
-		}
-		if top >= run || bottom >= run {
+		if v >= top && runs(x, stride, n, i, func(v float32) bool { return v >= top }) >= run ||
+			v <= bottom && runs(x, stride, n, i, func(v float32) bool { return v <= bottom }) >= run {
 			return true
 		}
 	}
 	return false
+}
+
+// runs returns how many samples in a row around i fulfil in.
+func runs(x []float32, stride, n, i int, in func(float32) bool) int {
+	first, last := i, i
+	for first > 0 && in(x[(first-1)*stride]) {
+		first--
+	}
+	for last < n-1 && in(x[(last+1)*stride]) {
+		last++
+	}
+	return last - first + 1
 }
 
 func (h *health) clear() { clear(h.flat) }

@@ -89,6 +89,8 @@ func (e *Engine) readVectors(m *Minute, use []bool, first int, tracked bool) {
 	e.taper = e.taper[:len(s.centre)]
 	hann(s, e.taper)
 	fits := newFits(s, lines, hz, e.taper)
+	e.spread.respond(fits.plain.weight, e.spread.plain)
+	e.spread.respond(fits.tapered.weight, e.spread.tapered)
 	stretch := int(math.Round(wanderSeconds * float64(len(s.centre)) / m.Seconds))
 	for i := range m.Points {
 		if !use[i] {
@@ -141,8 +143,8 @@ func (e *Engine) vector(f fits, i, n int) (Vector, *combined) {
 	best, variance := plain, 0.0
 	if len(z) >= fewestParts {
 		e.spread.measure(plain.residual, e.taper)
-		variance = e.spread.variance(plain.weight)
-		if v := e.spread.variance(tapered.weight); v < taperGain*variance {
+		variance = e.spread.variance(e.spread.plain)
+		if v := e.spread.variance(e.spread.tapered); v < taperGain*variance {
 			tapered.solve(z)
 			best, variance = tapered, v
 		}

@@ -24,7 +24,7 @@ type neighbours struct {
 type aLine struct{ offset, sweep float64 }
 
 const (
-	slots    = 512 // of the spectrum; a minute has up to 240 parts
+	slots    = 256 // of the spectrum; a minute has up to 240 parts
 	mostLine = 3   // lines fitted at the most
 	// ownBins is the distance from 1x, in units of 1/duration, within which a
 	// line cannot be told from the machine's own.

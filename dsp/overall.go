@@ -6,65 +6,63 @@ import (
 )
 
 // band measures the velocity of every point in the band of the standards: a
-// high pass of fourth order, of which one order integrates the acceleration.
+// high pass of third order, of which one order integrates the acceleration.
 // It is free of the orders' fit, so that it also counts what does not turn
 // with the shaft.
 type band struct {
 	stride int
 	rate   float64
 	corner float64
-	// Coefficients of the two second-order sections, common to all points.
-	a1, a2, b1, b2 float64
-	gain           float64
-	chain          []chain
-	settle         int64 // rows to pass before the output counts
-	rows           int64 // rows counted in the power
-	seen           int64 // rows looked at for the extremes
+	// Coefficients of the sections of second and first order, common to all
+	// points.
+	a1, a2, b1 float64
+	gain       float64
+	chain      []chain
+	begun      bool  // since the last restart
+	settle     int64 // rows to pass before the output counts
+	rows       int64 // rows counted in the power
+	seen       int64 // rows looked at for the extremes
 }
 
 // chain is the state and the sums of one point.
 type chain struct {
-	channel            int
-	x1, x2, w1, w2, w3 float64
-	u1, u2             float64
-	power              float64
-	low, high          float64 // extreme samples, volts
-	limit              float64 // full scale of the chain, volts
-	atLimit            int     // samples at or beyond it
+	channel   int
+	s1, s2    float64 // state of the first section
+	r1, r2    float64 // state of the second
+	power     float64
+	hold      float64 // the power while the filter settles
+	low, high float64 // extreme samples, volts
+	limit     float64 // full scale of the chain, volts
+	atLimit   int     // samples at or beyond it
 }
 
 // Lower ends of the band, Hz: 10 Hz, and 2 Hz below 600 r/min (ISO 20816-3,
-// from memory). The corner lies lower, so that the response at the end of the
-// band is 0.93 and at a quarter of it below 0.01, within the tolerance of
-// ISO 2954 (from memory); what the filter takes off the orders is put back
-// exactly.
+// from memory). The corner lies lower, so that the response is 0.85 at the end
+// of the band, 0.2 at half and 0.025 at a quarter of it, the tolerance of
+// ISO 2954 (from memory). What the filter takes off the orders is put back.
 const (
 	bandLow      = 10.0
 	bandLowSlow  = 2.0
 	slowRPM      = 600.0
 	bandHigh     = 1000.0
-	cornerShare  = 0.8
+	cornerShare  = 0.85
 	settlePeriod = 3.0 // of the corner
 )
-
-// The quality factors of a fourth-order Butterworth high pass.
-var butterworth4 = [2]float64{0.541196100146197, 1.306562964876377}
 
 func newBand(cfg *Config) *band {
 	b := &band{stride: cfg.Channels, rate: cfg.RateHz, corner: cornerShare * bandLow}
 	if cfg.RatedRPM > 0 && cfg.RatedRPM < slowRPM {
 		b.corner = cornerShare * bandLowSlow
 	}
-	// Bilinear transform with the corner prewarped.
+	// Third-order Butterworth high pass, (s^2/(s^2+s+1)) * (s/(s+1)), by the
+	// bilinear transform with the corner prewarped. In place of the last s
+	// stands the differentiator that is left of it after integration.
 	k := math.Tan(math.Pi * b.corner / b.rate)
-	section := func(q float64) (g, a1, a2 float64) {
-		g = 1 / (1 + k/q + k*k)
-		return g, 2 * (k*k - 1) * g, (1 - k/q + k*k) * g
-	}
-	var g1, g2 float64
-	g1, b.a1, b.a2 = section(butterworth4[0])
-	g2, b.b1, b.b2 = section(butterworth4[1])
-	b.gain = g1 * g2 / b.rate
+	g1 := 1 / (1 + k + k*k)
+	b.a1, b.a2 = 2*(k*k-1)*g1, (1-k+k*k)*g1
+	g2 := 1 / (1 + k)
+	b.b1 = (k - 1) * g2
+	b.gain = g1 * g2 / b.rate * outer
 	for _, p := range cfg.Points {
 		c := chain{channel: p.Channel, limit: p.FullScaleV}
 		if c.limit == 0 {
@@ -81,9 +79,10 @@ func newBand(cfg *Config) *band {
 func (b *band) restart() {
 	for i := range b.chain {
 		c := &b.chain[i]
-		c.x1, c.x2, c.w1, c.w2, c.w3, c.u1, c.u2 = 0, 0, 0, 0, 0, 0, 0
+		c.s1, c.s2, c.r1, c.r2 = 0, 0, 0, 0
 	}
 	b.settle = int64(settlePeriod * b.rate / b.corner)
+	b.begun = false
 }
 
 // clear starts the sums anew, at a minute's end.
@@ -95,80 +94,93 @@ func (b *band) clear() {
 	}
 }
 
-// Weights of the last stage's numerator: (1-z)(c + (1-2c)z + c z^2), where the
-// bracket with c = 1/24 makes the response of 1/(1-z) follow 1/frequency (its
-// error is 0.8 % at a fifth and 12 % at two fifths of the sample rate).
+// The last stage's numerator is a three-point weight, 1/24 outside and 22/24 in
+// the middle, which makes the response of 1/(1-z) follow 1/frequency: its error
+// is 0.8 % at a fifth and 12 % at two fifths of the sample rate. The outer
+// weight is taken into the gain.
 const (
 	outer = 1.0 / 24
-	inner = 1 - 3*outer
+	ratio = 22.0
 )
 
 // push filters rows of samples.
 func (b *band) push(volts []float32) {
 	n := int64(len(volts) / b.stride)
+	if n == 0 {
+		return
+	}
 	b.seen += n
-	skip := min(n, b.settle)
-	if skip > 0 {
-		if b.settle == int64(settlePeriod*b.rate/b.corner) {
+	if skip := min(n, b.settle); skip > 0 {
+		if !b.begun {
 			b.preset(volts)
 		}
-		b.settle -= skip
+		head := volts[:int(skip)*b.stride]
 		for i := range b.chain {
-			c := &b.chain[i]
-			power := c.power
-			b.run(c, volts[:int(skip)*b.stride])
-			c.power = power
+			b.chain[i].hold = b.chain[i].power
 		}
-		volts = volts[int(skip)*b.stride:]
+		b.run(head)
+		for i := range b.chain {
+			b.chain[i].power = b.chain[i].hold
+		}
+		b.count(head)
+		b.settle -= skip
+		n -= skip
+		volts = volts[len(head):]
 	}
-	b.rows += n - skip
-	for i := range b.chain {
-		b.run(&b.chain[i], volts)
-	}
+	b.rows += n
+	b.run(volts)
+	b.count(volts)
 }
 
-// preset makes the first sample the level before it, so that a bias does not
-// ring.
+// preset puts the first section into the state that a steady signal of the
+// first sample's level leaves, so that a bias does not ring.
 func (b *band) preset(volts []float32) {
+	b.begun = true
 	for i := range b.chain {
 		c := &b.chain[i]
-		c.x1 = float64(volts[c.channel])
-		c.x2 = c.x1
+		x := float64(volts[c.channel])
+		c.s1, c.s2 = -x, x
 	}
 }
 
-func (b *band) run(c *chain, volts []float32) {
-	x1, x2, w1, w2, w3, u1, u2 := c.x1, c.x2, c.w1, c.w2, c.w3, c.u1, c.u2
-	power, low, high := c.power, c.low, c.high
-	a1, a2, b1, b2 := b.a1, b.a2, b.b1, b.b2
-	for at := c.channel; at < len(volts); at += b.stride {
-		x := float64(volts[at])
-		if x < low {
-			low = x
+// run filters rows, all points of a row together: their recurrences are
+// independent and run side by side in the processor.
+func (b *band) run(volts []float32) {
+	a1, a2, b1 := b.a1, b.a2, b.b1
+	for at := 0; at+b.stride <= len(volts); at += b.stride {
+		row := volts[at : at+b.stride]
+		for i := range b.chain {
+			c := &b.chain[i]
+			x := float64(row[c.channel])
+			if x < c.low {
+				c.low = x
+			}
+			if x > c.high {
+				c.high = x
+			}
+			w := x + c.s1
+			c.s1 = c.s2 - (x + x) - a1*w
+			c.s2 = x - a2*w
+			u := w + c.r1
+			c.r1 = ratio*w + c.r2 - b1*u
+			c.r2 = w
+			c.power += u * u
 		}
-		if x > high {
-			high = x
-		}
-		w := x - 2*x1 + x2 - a1*w1 - a2*w2
-		u := outer*(w-w3) + inner*(w1-w2) - b1*u1 - b2*u2
-		power += u * u
-		x2, x1 = x1, x
-		w3, w2, w1 = w2, w1, w
-		u2, u1 = u1, u
-	}
-	c.x1, c.x2, c.w1, c.w2, c.w3, c.u1, c.u2 = x1, x2, w1, w2, w3, u1, u2
-	c.power, c.low, c.high = power, low, high
-	if high >= c.limit || low <= -c.limit {
-		b.count(c, volts)
 	}
 }
 
-// count adds the samples at the end of the chain's range. It runs only in
-// minutes in which there are any.
-func (b *band) count(c *chain, volts []float32) {
-	for at := c.channel; at < len(volts); at += b.stride {
-		if math.Abs(float64(volts[at])) >= c.limit {
-			c.atLimit++
+// count adds the samples at the end of a chain's range. It looks closely only
+// in minutes in which there are any.
+func (b *band) count(volts []float32) {
+	for i := range b.chain {
+		c := &b.chain[i]
+		if c.high < c.limit && c.low > -c.limit {
+			continue
+		}
+		for at := c.channel; at < len(volts); at += b.stride {
+			if math.Abs(float64(volts[at])) >= c.limit {
+				c.atLimit++
+			}
 		}
 	}
 }
@@ -186,7 +198,7 @@ func (b *band) meanSquare(point int) float64 {
 // velocity against the ideal, at hz: 1 in the middle of the band.
 func (b *band) response(hz float64) float64 {
 	z := cmplx.Rect(1, -2*math.Pi*hz/b.rate)
-	num := (1 - 2*z + z*z) * (complex(outer, 0)*(1-z*z*z) + complex(inner, 0)*(z-z*z))
-	den := (1 + complex(b.a1, 0)*z + complex(b.a2, 0)*z*z) * (1 + complex(b.b1, 0)*z + complex(b.b2, 0)*z*z)
+	num := (1 - 2*z + z*z) * (1 + complex(ratio, 0)*z + z*z)
+	den := (1 + complex(b.a1, 0)*z + complex(b.a2, 0)*z*z) * (1 + complex(b.b1, 0)*z)
 	return cmplx.Abs(num/den) * b.gain * 2 * math.Pi * hz
 }

@@ -115,31 +115,37 @@ func (f *fitter) fit() {
 // s of cosines and sines, and returns the row after them.
 func (f *fitter) angles(row int64, t turn, c, s *[2*Orders + 1]float64) int64 {
 	step := 2 * math.Pi / (t.end - t.start)
-	sin, cos := math.Sincos((float64(row) - t.start) * step)
+	angle := (float64(row) - t.start) * step
+	sin, cos := math.Sincos(angle)
 	ds, dc := math.Sincos(step)
 	end := int64(math.Ceil(t.end))
-	c[0] += float64(end - row)
-	for ; row < end; row++ {
+	n := int(end - row)
+	sumAngles(n, complex(cos, sin), complex(dc, ds), angle+float64(n)*step, c, s)
+	for range n {
 		// Double and triple angles; the recurrence starts anew each turn, so
 		// that rounding does not build up.
 		c2, s2 := 2*cos*cos-1, 2*sin*cos
-		c3, s3 := cos*c2-sin*s2, sin*c2+cos*s2
-		f.table = append(f.table, trig{cos, sin, c2, s2, c3, s3})
-		c[1] += cos
-		s[1] += sin
-		c[2] += c2
-		s[2] += s2
-		c[3] += c3
-		s[3] += s3
-		c[4] += 2*c2*c2 - 1
-		s[4] += 2 * s2 * c2
-		c[5] += c2*c3 - s2*s3
-		s[5] += s2*c3 + c2*s3
-		c[6] += 2*c3*c3 - 1
-		s[6] += 2 * s3 * c3
+		f.table = append(f.table, trig{cos, sin, c2, s2, cos*c2 - sin*s2, sin*c2 + cos*s2})
 		cos, sin = cos*dc-sin*ds, sin*dc+cos*ds
 	}
-	return row
+	return end
+}
+
+// sumAngles adds the sums of cos(k*angle) and sin(k*angle), k = 0 to 2*Orders,
+// over n rows whose angles start at that of first, advance by that of step and
+// end before last: geometric series, e^(jk*angle) summed is
+// (e^(jk*last) - e^(jk*first)) / (e^(jk*step) - 1).
+func sumAngles(n int, first, step complex128, last float64, c, s *[2*Orders + 1]float64) {
+	sin, cos := math.Sincos(last)
+	end := complex(cos, sin)
+	c[0] += float64(n)
+	e, f, d := end, first, step
+	for k := 1; k <= 2*Orders; k++ {
+		sum := (e - f) / (d - 1)
+		c[k] += real(sum)
+		s[k] += imag(sum)
+		e, f, d = e*end, f*first, d*step
+	}
 }
 
 // project returns the products of a channel's samples, the first of which is

@@ -9,7 +9,7 @@ type rows struct {
 }
 
 func newRows(stride, keep int) *rows {
-	return &rows{stride: stride, keep: keep, data: make([]float32, 0, 2*keep*stride)}
+	return &rows{stride: stride, keep: keep, data: make([]float32, 0, 3*keep*stride)}
 }
 
 // end returns the index after the last row.

@@ -15,19 +15,21 @@ import (
 // is best in white noise, the tapered one when a wandering neighbour or a slow
 // change is left over.
 type spread struct {
-	fft      *fourier.CmplxFFT
-	in, out  []complex128
-	density  []float64
-	response []float64
+	fft     *fourier.CmplxFFT
+	in, out []complex128
+	density []float64
+	// plain and tapered are the responses of the two sets of weights.
+	plain, tapered []float64
 }
 
 func newSpread() *spread {
 	return &spread{
-		fft:      fourier.NewCmplxFFT(slots),
-		in:       make([]complex128, slots),
-		out:      make([]complex128, slots),
-		density:  make([]float64, slots),
-		response: make([]float64, slots),
+		fft:     fourier.NewCmplxFFT(slots),
+		in:      make([]complex128, slots),
+		out:     make([]complex128, slots),
+		density: make([]float64, slots),
+		plain:   make([]float64, slots),
+		tapered: make([]float64, slots),
 	}
 }
 
@@ -67,19 +69,27 @@ func (sp *spread) measure(residual []complex128, taper []float64) {
 	}
 }
 
-// variance returns the variance of the mean with the given weights (their sum
-// is 1), given the density.
-func (sp *spread) variance(weight []float64) float64 {
+// respond fills response with the power response of weights (their sum is 1)
+// to the slots of the density.
+func (sp *spread) respond(weight, response []float64) {
 	clear(sp.in)
 	for k := range min(len(weight), slots) {
 		sp.in[k] = complex(weight[k], 0)
 	}
 	sp.fft.Coefficients(sp.out, sp.in)
-	v := 0.0
 	for m, c := range sp.out {
-		v += sp.density[m] * (real(c)*real(c) + imag(c)*imag(c))
+		response[m] = (real(c)*real(c) + imag(c)*imag(c)) / slots
 	}
-	return v / slots
+}
+
+// variance returns the variance of the mean whose weights have the given
+// response, for the density measured last.
+func (sp *spread) variance(response []float64) float64 {
+	v := 0.0
+	for m, d := range sp.density {
+		v += d * response[m]
+	}
+	return v
 }
 
 // median sorts x and returns its middle value.
