@@ -4,8 +4,10 @@ import (
 	"fmt"
 	"os"
 	"path/filepath"
+	"slices"
 	"strings"
 
+	"heavyspot/acquire/ads131m08"
 	"heavyspot/dsp"
 	"heavyspot/rules"
 )
@@ -63,6 +65,21 @@ func (c *Config) Rules() rules.Config {
 			Direction:   directionOf[p.Direction],
 		})
 	}
+	return out
+}
+
+// ADS131M08 returns the configuration of the converter with all its channels
+// in use. The clock, the thread's set-up and the fault reports are the caller's
+// to add.
+func (c *Config) ADS131M08() ads131m08.Config {
+	out := ads131m08.Default()
+	out.RateHz = c.Source.RateHz
+	out.Channels = converterChannels
+	out.Gains = slices.Clone(c.Source.Gain)
+	out.ClockHz = float64(c.Source.ClockHz)
+	out.Crystal = c.Source.Clock == "crystal"
+	out.SPIHz = float64(c.Source.SPIHz)
+	out.InputCRC = c.Source.InputCRC
 	return out
 }
 

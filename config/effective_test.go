@@ -56,6 +56,9 @@ func drawConfig(t *rapid.T) *Config {
 			NoiseMMS: rapid.Float64Range(0, 20).Draw(t, "noise"), Seed: rapid.IntRange(0, 1<<31-1).Draw(t, "seed"),
 			SpeedUp: rapid.Float64Range(0.1, 1000).Draw(t, "speed_up"),
 		}
+		if cfg.Rig.Fault == faultOverhung {
+			cfg.Machine.Rotor = "overhung"
+		}
 	}
 	drawSensors(t, cfg)
 	drawDelivery(t, cfg)
@@ -108,7 +111,7 @@ func drawDelivery(t *rapid.T, cfg *Config) {
 		KeepDays: rapid.IntRange(1, 3650).Draw(t, "keep"), FindingsKeepDays: rapid.IntRange(1, 3650).Draw(t, "findings"),
 	}
 	m := &cfg.MQTT
-	m.Root = rapid.StringMatching(`[^+#$/\x00-\x1f\x7f]{1,20}(/[a-zé]{1,9})?`).Draw(t, "root")
+	m.Root = rapid.StringMatching(`[^+#$/\x00-\x20\x7f]{1,20}(/[a-zé]{1,9})?`).Draw(t, "root")
 	m.ClientID = rapid.StringMatching(`[A-Za-z0-9_.-]{1,30}`).Draw(t, "client")
 	m.KeepaliveS, m.InFlight = rapid.IntRange(5, 3600).Draw(t, "keepalive"), rapid.IntRange(1, 64).Draw(t, "in flight")
 	if rapid.Bool().Draw(t, "has broker") {

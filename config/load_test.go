@@ -137,3 +137,23 @@ point = [
 		t.Errorf("error %v, want %s", err, want)
 	}
 }
+
+// Files made to be slow or to fill the memory are refused like any other.
+func TestHugeNestingIsRefused(t *testing.T) {
+	const n = mostBytes/2 - 100
+	for name, text := range map[string]string{
+		"lists":   "x = " + strings.Repeat("[", 9000) + strings.Repeat("]", 9000),
+		"dots":    strings.Repeat("a.", n) + "a = 1",
+		"headers": "[" + strings.Repeat("a.", n) + "a]",
+		"tables":  "x = " + strings.Repeat("{a=", 9000) + "1" + strings.Repeat("}", 9000),
+		"too far": "x = " + strings.Repeat("[", n),
+		"key":     strings.Repeat("a", 2*n) + " = 1",
+		"points":  strings.Repeat("[[point]]\n", n/5),
+		"gain":    "[source]\ngain = [" + strings.Repeat("0,", n-50) + "]",
+		"brokers": "[mqtt]\nbrokers = [" + strings.Repeat("0,", n-50) + "]",
+	} {
+		if cfg, err := Parse("f.toml", []byte(text)); err == nil || !strings.HasPrefix(err.Error(), "f.toml:1") {
+			t.Errorf("%s: configuration %v, error %.200v", name, cfg, err)
+		}
+	}
+}

@@ -4,6 +4,8 @@ import (
 	"fmt"
 	"math"
 	"strings"
+
+	"heavyspot/acquire/ads131m08"
 )
 
 // CheckSource tells what keeps the configured source from being driven: run and
@@ -17,6 +19,7 @@ func (c *Config) CheckSource() error {
 		return sorted(k.problems)
 	}
 	s.checkRate(c)
+	s.checkBus(c)
 	if c.Source.ClockHz > 8_200_000 {
 		for i, g := range c.Source.Gain {
 			if g > 2 {
@@ -26,6 +29,11 @@ func (c *Config) CheckSource() error {
 		}
 	}
 	k.checkReferenceLevel(c)
+	if converter := c.ADS131M08(); len(k.problems) == 0 {
+		if err := converter.Validate(); err != nil {
+			s.failAt("driver", err.Error())
+		}
+	}
 	return sorted(k.problems)
 }
 
@@ -49,6 +57,19 @@ func (s section) checkRate(c *Config) {
 	const samplesPerTurn = 8
 	if least := samplesPerTurn * c.Machine.RatedRPM / 60; c.Source.RateHz < least {
 		s.failAt("rate_hz", fmt.Sprintf("must be at least %s (Hz, %d samples a turn at rated_rpm)", plain(math.Ceil(least)), samplesPerTurn))
+	}
+}
+
+// checkBus checks that a frame of the converter crosses the bus in half a
+// sample period, so that there is time to react.
+func (s section) checkBus(c *Config) {
+	least := 2 * 8 * ads131m08.FrameBytes * c.Source.RateHz
+	switch {
+	case float64(c.Source.SPIHz) >= least:
+	case s.has("spi_hz"):
+		s.failAt("spi_hz", fmt.Sprintf("must be at least %s (Hz) at rate_hz = %s", plain(least), plain(c.Source.RateHz)))
+	case !s.told[s.of("rate_hz")]:
+		s.failAt("rate_hz", fmt.Sprintf("needs spi_hz of at least %s (Hz); the default is %d", plain(least), c.Source.SPIHz))
 	}
 }
 

@@ -4,6 +4,8 @@ import (
 	"slices"
 	"strings"
 	"testing"
+
+	"pgregory.net/rapid"
 )
 
 // The rates at 8.192 MHz are those of the ADS131M08 data sheet, table 8-2.
@@ -18,7 +20,10 @@ func TestCheckSource(t *testing.T) {
 	const list = "must be 250, 500, 1000, 2000, 4000, 8000, 16000 or 32000 (Hz, from clock_hz = 8192000)"
 	for _, m := range []mistake{
 		{13, "rate_hz = 1000", ""},
-		{13, "rate_hz = 32000.0", ""},
+		{13, "rate_hz = 16000.0", ""},
+		{13, "rate_hz = 32000", "13: source.rate_hz = 32000: needs spi_hz of at least 15360000 (Hz); the default is 8000000"},
+		{13, "rate_hz = 32000\nspi_hz = 15359999", "14: source.spi_hz = 15359999: must be at least 15360000 (Hz) at rate_hz = 32000"},
+		{13, "rate_hz = 32000\nspi_hz = 15360000", ""},
 		{13, "rate_hz = 1024", "13: source.rate_hz = 1024: " + list},
 		{13, "rate_hz = 125", "13: source.rate_hz = 125: " + list},
 		{13, "rate_hz = 1000\nclock_hz = 4096000", ""},
@@ -49,6 +54,25 @@ func TestCheckSource(t *testing.T) {
 			t.Errorf("%q:\n got %s\nwant %s", m.text, got, m.want)
 		}
 	}
+}
+
+// Where nothing but the converter can object, the two judge alike.
+func TestCheckSourceAgreesWithTheConverter(t *testing.T) {
+	rapid.Check(t, func(t *rapid.T) {
+		cfg := drawConfig(t)
+		cfg.Source.Driver, cfg.Machine.RatedRPM, cfg.Reference = DriverADS131M08, 60, nil
+		if rapid.Bool().Draw(t, "rate of the converter") {
+			cfg.Source.RateHz = rapid.SampledFrom(Rates(cfg.Source.ClockHz)).Draw(t, "rate")
+		}
+		converter := cfg.ADS131M08()
+		ours, theirs := cfg.CheckSource(), converter.Validate()
+		if (ours == nil) != (theirs == nil) {
+			t.Fatalf("here %v, at the converter %v", ours, theirs)
+		}
+		if ours != nil && strings.Contains(ours.Error(), "ads131m08:") {
+			t.Fatalf("only the converter knew: %v", ours)
+		}
+	})
 }
 
 // A machine too fast for the rate is told, just fast enough is not.

@@ -14,13 +14,16 @@ var (
 	// rootForm forbids wildcards, $ and empty levels, which brokers treat
 	// specially (MQTT 3.1.1, 4.7).
 	rootForm = form{
-		regexp.MustCompile(`^[^+#$/\x00-\x1f\x7f]{1,63}(/[^+#$/\x00-\x1f\x7f]{1,63}){0,3}$`),
-		"1 to 4 levels of 1 to 63 characters with / between them, without + # $",
+		regexp.MustCompile(`^[^+#$/\x00-\x20\x7f]{1,63}(/[^+#$/\x00-\x20\x7f]{1,63}){0,3}$`),
+		"1 to 4 levels of 1 to 63 characters with / between them, without + # $ or spaces",
 	}
 	clientForm = form{regexp.MustCompile(`^[0-9A-Za-z_.-]{1,128}$`), "letters, digits, _ . and -, from 1 to 128 characters"}
 	listenForm = form{regexp.MustCompile(`^.{1,128}$`), "an address"}
 	userForm   = form{regexp.MustCompile(`^[^\x00-\x1f\x7f]{1,256}$`), "a name of 1 to 256 characters"}
 )
+
+// mostBrokers bounds the list, so that one round of trying them stays short.
+const mostBrokers = 8
 
 const brokerWords = `like "tcp://127.0.0.1:1883" or "ssl://broker.example:8883", without a path`
 
@@ -63,6 +66,10 @@ func (s section) validateListen(m *MQTT) {
 func (s section) validateBrokers(brokers []string) bool {
 	if kind := s.wrong[s.of("brokers")]; kind != "" {
 		s.failAt("brokers", "must be a list of addresses "+brokerWords+", not "+kind)
+		return false
+	}
+	if len(brokers) > mostBrokers {
+		s.failAt("brokers", fmt.Sprintf("must be a list of at most %d addresses", mostBrokers))
 		return false
 	}
 	right := true

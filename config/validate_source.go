@@ -53,6 +53,9 @@ func (c *checker) validateRig(cfg *Config) {
 		return
 	}
 	s.choice("fault", optional, r.Fault, faults)
+	if s.sound("fault") && r.Fault == faultOverhung && c.section("machine").sound("rotor") && cfg.Machine.Rotor != "overhung" {
+		s.failAt("fault", `must be another one beside machine.rotor = "`+cfg.Machine.Rotor+`"`)
+	}
 	s.number("mm_s_rms", optional, r.MMS, span{0, 100, "mm/s rms"})
 	s.number("noise_mm_s_rms", optional, r.NoiseMMS, span{0, 20, "mm/s rms"})
 	s.whole("seed", optional, r.Seed, span{0, 1<<31 - 1, ""})

@@ -1,5 +1,12 @@
 package config
 
+import (
+	"slices"
+
+	"heavyspot/acquire/ads131m08"
+	"heavyspot/rules"
+)
+
 // The drivers of [source].
 const (
 	// DriverADS131M08 is the converter on SPI.
@@ -18,8 +25,8 @@ const (
 	StandardOwn       = "own"
 )
 
-// converterChannels is the number of channels of the ADS131M08 (data sheet).
-const converterChannels = 8
+// converterChannels is the number of channels of the converter.
+const converterChannels = ads131m08.MaxChannels
 
 var (
 	drivers    = []string{DriverADS131M08, DriverADXL355, DriverRig}
@@ -32,14 +39,21 @@ var (
 	edges      = []string{"rising", "falling"}
 	bearings   = []string{"drive-end", "non-drive-end"}
 	directions = []string{"vertical", "horizontal", "axial"}
-	faults     = []string{
-		"none", "static", "couple", "dynamic", "overhung", "bent-shaft", "misalignment",
-		"eccentricity", "resonance", "looseness", "rub", "neighbour",
-	}
 )
 
+// faults are the simulated machine's troubles: the kinds of unbalance, then the
+// causes that a judgement calls suspects, by the same words.
+var faults = []string{
+	"none", "static", "couple", "dynamic", faultOverhung,
+	string(rules.BentShaft), string(rules.Misalignment), string(rules.Eccentricity), string(rules.Resonance),
+	string(rules.Looseness), string(rules.RubOrLooseRotor), string(rules.NeighbourMachine), string(rules.NotTurnRelated),
+}
+
+// faultOverhung needs a machine with an overhung rotor.
+const faultOverhung = "overhung"
+
 // Faults returns the words that [rig] fault may hold.
-func Faults() []string { return append([]string(nil), faults...) }
+func Faults() []string { return slices.Clone(faults) }
 
 // defaults returns the configuration that a file is read over.
 func defaults() *Config {
