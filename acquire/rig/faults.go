@@ -35,8 +35,9 @@ func MidspanBow(heightM, spanM, angleDeg float64) Bow {
 // direction in space, not turning with the shaft, and independent of speed
 // because the coupling imposes a displacement.
 type Misalignment struct {
-	// RadialN, AxialN (N) and MomentNM (N m, tilting in the vertical plane)
-	// are the peak values of orders 1 to 3.
+	// RadialN, AxialN (N) and MomentNM (N m) are the peak values of orders 1 to
+	// 3. The moment bends in the plane of RadialN; a positive one lifts the
+	// non-drive end where a positive force lifts the shaft.
 	RadialN, AxialN, MomentNM [3]float64
 	// LagDeg is the lag of each order, degrees of its own cycle.
 	LagDeg [3]float64

@@ -105,7 +105,9 @@ func (l *loads) addMisalignment(c *Config) {
 		p := &l.still[i+1]
 		p.addForce(c, m.PositionM, complex(m.RadialN[i], 0)*turn, m.DirectionDeg)
 		p[rotorA] += complex(m.AxialN[i], 0) * turn
-		p[tiltH] += complex(m.MomentNM[i], 0) * turn
+		sin, cos := math.Sincos(radians(m.DirectionDeg))
+		p[tiltH] += complex(m.MomentNM[i]*cos, 0) * turn
+		p[tiltV] -= complex(m.MomentNM[i]*sin, 0) * turn
 	}
 }
 

@@ -5,6 +5,7 @@ import (
 	"errors"
 	"io"
 	"math"
+	"math/rand/v2"
 	"testing"
 	"time"
 
@@ -159,3 +160,6 @@ func TestPhasorsAreWhatTheySay(t *testing.T) {
 		}
 	}
 }
+
+// newRand returns the generator of a seed.
+func newRand(seed uint64) *rand.Rand { return rand.New(rand.NewPCG(seed, 7)) }

@@ -138,3 +138,8 @@ func (m *matrices) gyroscopic(i, j int) float64 {
 	}
 	return 0
 }
+
+// lagBetween returns the phase between two vectors, 0 to 180 degrees.
+func lagBetween(a, b Vector) float64 {
+	return math.Abs(math.Remainder(a.Lag-b.Lag, 360))
+}
