@@ -6,14 +6,21 @@ import "math"
 // and sine of each order.
 const unknowns = 1 + 2*Orders
 
-// normal is the symmetric matrix of the normal equations, then its factor.
+// normal is the symmetric matrix of the normal equations, then its factor with
+// the reciprocals of the diagonal.
 type normal [unknowns][unknowns]float64
 
-// build fills the first m rows and columns from the sums over the rows of
-// samples of cos(n*theta) and sin(n*theta), n = 0 to 2*Orders, by
-// cos a cos b = (cos(a-b) + cos(a+b))/2 and its kin.
+// build fills the matrix from the sums over the rows of samples of
+// cos(n*theta) and sin(n*theta), n = 0 to 2*Orders, by
+// cos a cos b = (cos(a-b) + cos(a+b))/2 and its kin. Rows and columns from m on
+// are those of the unit matrix: orders that the sample rate does not allow.
 func (a *normal) build(m int, c, s *[2*Orders + 1]float64) {
-	for i := range m {
+	*a = normal{}
+	for i := range unknowns {
+		if i >= m {
+			a[i][i] = 1
+			continue
+		}
 		for j := 0; j <= i; j++ {
 			a[i][j] = product(i, j, c, s)
 		}
@@ -37,10 +44,10 @@ func product(i, j int, c, s *[2*Orders + 1]float64) float64 {
 	}
 }
 
-// factor replaces the first m rows by their Cholesky factor; false means that
-// the samples do not determine the unknowns.
-func (a *normal) factor(m int) bool {
-	for j := range m {
+// factor replaces the matrix by its Cholesky factor; false means that the
+// samples do not determine the unknowns.
+func (a *normal) factor() bool {
+	for j := range unknowns {
 		d := a[j][j]
 		for k := range j {
 			d -= a[j][k] * a[j][k]
@@ -48,14 +55,14 @@ func (a *normal) factor(m int) bool {
 		if !(d > leastPivot*a[j][j]) {
 			return false
 		}
-		d = math.Sqrt(d)
+		d = 1 / math.Sqrt(d)
 		a[j][j] = d
-		for i := j + 1; i < m; i++ {
+		for i := j + 1; i < unknowns; i++ {
 			v := a[i][j]
 			for k := range j {
 				v -= a[i][k] * a[j][k]
 			}
-			a[i][j] = v / d
+			a[i][j] = v * d
 		}
 	}
 	return true
@@ -66,17 +73,19 @@ func (a *normal) factor(m int) bool {
 const leastPivot = 0.01
 
 // solve replaces y by the solution.
-func (a *normal) solve(m int, y *[unknowns]float64) {
-	for i := range m {
+func (a *normal) solve(y *[unknowns]float64) {
+	for i := range unknowns {
+		v := y[i]
 		for k := range i {
-			y[i] -= a[i][k] * y[k]
+			v -= a[i][k] * y[k]
 		}
-		y[i] /= a[i][i]
+		y[i] = v * a[i][i]
 	}
-	for i := m - 1; i >= 0; i-- {
-		for k := i + 1; k < m; k++ {
-			y[i] -= a[k][i] * y[k]
+	for i := unknowns - 1; i >= 0; i-- {
+		v := y[i] * a[i][i]
+		y[i] = v
+		for k := range i {
+			y[k] -= a[i][k] * v
 		}
-		y[i] /= a[i][i]
 	}
 }

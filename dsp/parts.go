@@ -46,7 +46,7 @@ func newFitter(cfg *Config, buf *rows, done func(*part)) *fitter {
 		buf: buf, done: done,
 		minRows: max(partSeconds*cfg.RateHz, partRows),
 		pending: make([]turn, 0, 256),
-		table:   make([]trig, 0, buf.keep),
+		table:   make([]trig, 0, 2*int(max(partSeconds*cfg.RateHz, partRows))),
 	}
 	for _, p := range cfg.Points {
 		f.channels = append(f.channels, p.Channel)
@@ -85,21 +85,23 @@ func (f *fitter) fit() {
 	start := max(int64(math.Ceil(first)), f.buf.base)
 	var c, s [2*Orders + 1]float64
 	f.table = f.table[:0]
+	if n := int(last-first) + 2; cap(f.table) < n {
+		f.table = make([]trig, 0, n)
+	}
 	row := start
 	for _, t := range f.pending {
 		row = f.angles(row, t, &c, &s)
 	}
 	f.pending = f.pending[:0]
-	m := 1 + 2*p.orders
 	var a normal
-	a.build(m, &c, &s)
-	if p.orders < 1 || !a.factor(m) {
+	a.build(1+2*p.orders, &c, &s)
+	if p.orders < 1 || !a.factor() {
 		return
 	}
 	x := f.buf.from(start)
 	for i, ch := range f.channels {
 		y := f.project(x[ch:])
-		a.solve(m, &y)
+		a.solve(&y)
 		p.level[i] = y[0]
 		for n := range p.orders {
 			p.vector[i][n] = complex(y[2*n+1], -y[2*n+2])
@@ -121,11 +123,13 @@ func (f *fitter) angles(row int64, t turn, c, s *[2*Orders + 1]float64) int64 {
 	end := int64(math.Ceil(t.end))
 	n := int(end - row)
 	sumAngles(n, complex(cos, sin), complex(dc, ds), angle+float64(n)*step, c, s)
-	for range n {
+	at := len(f.table)
+	f.table = f.table[:at+n]
+	for i := range f.table[at:] {
 		// Double and triple angles; the recurrence starts anew each turn, so
 		// that rounding does not build up.
 		c2, s2 := 2*cos*cos-1, 2*sin*cos
-		f.table = append(f.table, trig{cos, sin, c2, s2, cos*c2 - sin*s2, sin*c2 + cos*s2})
+		f.table[at+i] = trig{cos, sin, c2, s2, cos*c2 - sin*s2, sin*c2 + cos*s2}
 		cos, sin = cos*dc-sin*ds, sin*dc+cos*ds
 	}
 	return end
