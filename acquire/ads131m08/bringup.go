@@ -40,6 +40,7 @@ func (s *Source) bringUp() error {
 	if err := s.resetChip(); err != nil {
 		return fmt.Errorf("cannot reset the converter: %w", err)
 	}
+	s.outset.moved = true
 	id, err := s.bus.read(regID)
 	if err != nil {
 		return fmt.Errorf("cannot read ID: %w", err)

@@ -9,9 +9,12 @@ import (
 )
 
 const (
-	patience     = 8 // tries to find the place again before the chip is set up anew
+	promptTries  = 8 // tries one after another, the later ones backing off
 	firstBackOff = 10 * time.Millisecond
-	maxBackOff   = time.Second
+	maxBackOff   = 200 * time.Millisecond
+	// patience is how long the chip is only listened to. A reset would lose
+	// the place of its conversions in time, and with it the exact gap.
+	patience = 300 * time.Millisecond
 )
 
 // trouble is why a row could not be had.
@@ -24,34 +27,75 @@ type trouble struct {
 // and records the gap.
 func (s *Source) outage(f *trouble) {
 	s.flush()
-	first, cause := s.next, f.cause
-	exact := true
-	backOff := firstBackOff
+	first := s.next
+	s.outset = outset{cause: f.cause, at: s.ready.Now()}
 	s.noteFault(f, first)
+	backOff := firstBackOff
 	for try := 0; !s.stopping(); try++ {
-		next := s.findPlace(try > patience)
-		if next != nil && (next.cause == acquire.ChipReset || try >= patience) {
-			exact = false
-			next = s.setUpAnew(next)
-		}
-		if next == nil {
-			s.closeGap(first, cause, exact)
+		if f = s.recover(f, try); f == nil {
+			s.closeGap(first)
 			return
 		}
-		if next.cause > cause {
-			cause = next.cause
-			s.noteFault(next, first)
+		if s.blame(f.cause) {
+			s.noteFault(f, first)
 		}
-		if try < patience {
-			continue
+		if try >= promptTries || f.cause == acquire.ChipReset {
+			s.pause(backOff)
+			backOff = min(2*backOff, maxBackOff)
 		}
-		s.pause(backOff)
-		backOff = min(2*backOff, maxBackOff)
 	}
 }
 
+// outset is what is known of the outage in progress.
+type outset struct {
+	cause acquire.Cause // the worst so far
+	at    time.Duration // when it began
+	reset bool          // the chip was sent a reset
+	moved bool          // conversions began anew
+}
+
+// blame makes c the cause when it is worse and says whether it is. Once the
+// chip was sent a reset, that it has restarted proves nothing.
+func (s *Source) blame(c acquire.Cause) bool {
+	if !worse(c, s.outset.cause) || c == acquire.ChipReset && s.outset.reset {
+		return false
+	}
+	s.outset.cause = c
+	return true
+}
+
+// worse says whether a explains more than b: a chip that has restarted more
+// than a dead bus, that more than wrong check sums, these more than lateness.
+func worse(a, b acquire.Cause) bool {
+	rank := [...]uint8{acquire.Late: 1, acquire.BadCheck: 2, acquire.BusFault: 3, acquire.ChipReset: 4}
+	return rank[a] > rank[b]
+}
+
+// recover tries once to get going after f. At first it only looks for the
+// place in the stream; a chip that has restarted, or does not come back, is
+// set up anew. It returns what is still wrong, nil for nothing.
+func (s *Source) recover(f *trouble, try int) *trouble {
+	if f.cause != acquire.ChipReset {
+		if f = s.findPlace(try > promptTries); f == nil {
+			return nil
+		}
+	}
+	if f.cause != acquire.ChipReset && s.ready.Now()-s.outset.at < patience {
+		return f
+	}
+	if s.blame(f.cause) {
+		s.noteFault(f, s.next)
+	}
+	s.outset.reset = true
+	if err := s.setUpAnew(); err != nil {
+		return &trouble{f.cause, err}
+	}
+	return nil
+}
+
 // closeGap adds the rows lost since first to the gap ahead of the next block.
-func (s *Source) closeGap(first int64, cause acquire.Cause, exact bool) {
+func (s *Source) closeGap(first int64) {
+	exact := !s.outset.moved
 	if s.next < first {
 		s.next, exact = first, false
 	}
@@ -62,7 +106,9 @@ func (s *Source) closeGap(first int64, cause acquire.Cause, exact bool) {
 		}
 		s.gap.Lost += lost
 		s.gap.Exact = s.gap.Exact && exact && s.clock.exact(lost)
-		s.gap.Cause = max(s.gap.Cause, cause)
+		if worse(s.outset.cause, s.gap.Cause) {
+			s.gap.Cause = s.outset.cause
+		}
 	}
 	s.noteOver(first, s.gap)
 }
@@ -75,7 +121,7 @@ func (s *Source) findPlace(verify bool) *trouble {
 			if errors.Is(err, errUnset) {
 				return &trouble{acquire.ChipReset, err}
 			}
-			return &trouble{acquire.BusFault, err}
+			return &trouble{causeOf(err), err}
 		}
 	}
 	period := time.Duration(s.clock.period)
@@ -134,9 +180,8 @@ func (s *Source) edgeAfter(t, limit time.Duration) (time.Duration, bool, error) 
 }
 
 // setUpAnew resets the chip and brings it up. Rows are counted on by time, but
-// the conversions' place in time is a new one. why is the fault that made it
-// necessary and decides what is told when this fails.
-func (s *Source) setUpAnew(why *trouble) *trouble {
+// the conversions' place in time is a new one.
+func (s *Source) setUpAnew() error {
 	s.noteRestart()
 	old := s.clock
 	err := s.bringUp()
@@ -145,9 +190,17 @@ func (s *Source) setUpAnew(why *trouble) *trouble {
 	}
 	if err != nil {
 		s.clock = old
-		return &trouble{why.cause, err}
+		return err
 	}
 	row := old.nearest(s.edgeAt)
 	s.clock.row, s.edge, s.next = row, row, row+1
 	return nil
+}
+
+// causeOf tells a wrong check sum from a bus that does not work at all.
+func causeOf(err error) acquire.Cause {
+	if errors.Is(err, ErrCheck) {
+		return acquire.BadCheck
+	}
+	return acquire.BusFault
 }

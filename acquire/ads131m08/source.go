@@ -34,7 +34,8 @@ type Source struct {
 	row     [MaxChannels]float32
 	block   *acquire.Block // being filled, nil for none
 	gap     acquire.Gap    // ahead of the next block
-	size    int            // values in a full block
+	outset  outset
+	size    int // values in a full block
 
 	// Between the goroutine and the reader.
 	full  chan *acquire.Block

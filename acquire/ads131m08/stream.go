@@ -1,7 +1,6 @@
 package ads131m08
 
 import (
-	"errors"
 	"fmt"
 	"math"
 	"runtime"
@@ -77,10 +76,8 @@ func (s *Source) checked() (Status, *trouble) {
 	}
 	st, err := s.decoder.Decode(&s.bus.r, s.row[:])
 	switch {
-	case errors.Is(err, ErrCheck):
-		return 0, &trouble{acquire.BadCheck, badFrame(err)}
 	case err != nil:
-		return 0, &trouble{acquire.BusFault, badFrame(err)}
+		return 0, &trouble{causeOf(err), badFrame(err)}
 	case !st.Configured():
 		return 0, &trouble{acquire.ChipReset, fmt.Errorf("STATUS %04Xh: %w: %s", uint16(st), errUnset, adviceSupply)}
 	}

@@ -42,6 +42,9 @@ type Options struct {
 	// KeepOldest chooses what happens to a full output: true drops the newest
 	// sample, false overwrites the oldest. The data sheet does not say.
 	KeepOldest bool
+	// QueueEdges makes Wait tell edges one by one, the oldest of up to 16
+	// first, as a queue of line events does; otherwise it tells the latest.
+	QueueEdges bool
 	// Seed starts the noise and the random faults.
 	Seed uint64
 	// Speed is the start value of SetSpeed; 0 means as fast as asked.
@@ -118,7 +121,10 @@ func New(o Options) (*Chip, error) {
 	}
 	c := &Chip{opts: o, rnd: rand.New(rand.NewPCG(o.Seed, 0x131)), limit: maxClock}
 	c.conv.init(o.Signal, step)
-	c.clock.init(o.ClockHz/2*(1+o.ClockErrorPPM*1e-6), o.Speed)
+	c.clock.rate = o.ClockHz / 2 * (1 + o.ClockErrorPPM*1e-6)
+	if err := c.SetSpeed(o.Speed); err != nil {
+		return nil, err
+	}
 	c.reset()
 	c.count.Resets = 0
 	c.answer = answer{word: resetDone}
@@ -149,6 +155,10 @@ func (c *Chip) Counters() Counters {
 func (c *Chip) Sync() {
 	c.mu.Lock()
 	defer c.mu.Unlock()
+	c.resync()
+}
+
+func (c *Chip) resync() {
 	c.status |= statusResync
 	c.restart()
 }

@@ -25,11 +25,6 @@ type clock struct {
 	anchor     time.Duration
 }
 
-func (k *clock) init(rate, speed float64) {
-	k.rate = rate
-	k.set(speed)
-}
-
 func (k *clock) set(speed float64) {
 	k.speed, k.anchorWall, k.anchor = speed, time.Now(), k.now
 }
@@ -55,9 +50,7 @@ func (c *Chip) advance(to time.Duration) {
 func (c *Chip) tick(end time.Duration) {
 	c.clock.now = max(c.clock.now, end)
 	c.clock.periods += int64(c.conv.unit)
-	if c.resetDue(end) {
-		c.reset()
-	}
+	c.upset(end)
 	if c.unitStep() {
 		c.converted(end)
 	}
@@ -135,7 +128,8 @@ var errClosed = errors.New("chip: cannot wait for data-ready: port closed")
 
 // Wait lets virtual time pass until the line falls, at most for timeout, which
 // must be positive. It returns at once when the line fell since the last Wait.
-// mono is the virtual time of the latest edge; ready is false when there was
+// mono is the virtual time of the edge, the latest one unless QueueEdges is
+// set; ready is false when there was
 // none. It fails once the port is closed.
 func (d *DataReady) Wait(timeout time.Duration) (mono time.Duration, ready bool, err error) {
 	if timeout <= 0 {
@@ -154,14 +148,13 @@ func (c *Chip) wait(timeout time.Duration) (time.Duration, bool, error) {
 		return 0, false, errClosed
 	}
 	deadline := c.clock.now + timeout
-	for !c.line.pending && c.clock.now < deadline {
+	for c.line.n == 0 && c.clock.now < deadline {
 		end := min(c.clock.end(c.conv.unit), deadline)
 		c.advance(end)
 	}
-	if !c.line.pending {
+	if c.line.n == 0 {
 		return 0, false, nil
 	}
 	c.beLate()
-	c.line.pending = false
-	return c.line.at, true, nil
+	return c.line.take(c.opts.QueueEdges), true, nil
 }

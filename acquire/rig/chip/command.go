@@ -120,6 +120,7 @@ func (c *Chip) changed(old *registers) {
 	if c.regs.osr() != old.osr() {
 		c.restart()
 	}
+	c.setNoise()
 	if c.regs.enabled() == 0 {
 		c.fifo.n = 0
 	}

@@ -35,6 +35,7 @@ type converter struct {
 	fast    int  // samples still to come from the fast path after a reset
 	block   row  // state of the DC block
 	osr     int
+	sd      row // noise of a sample as a part of full scale, rms
 }
 
 func (v *converter) init(s Signal, step int) {
@@ -66,6 +67,7 @@ func (c *Chip) unitStep() bool {
 	if v.restart {
 		if v.left == 0 {
 			v.begin(c.regs.osr())
+			c.setNoise()
 		}
 		return false
 	}
@@ -80,6 +82,14 @@ func (c *Chip) unitStep() bool {
 	}
 	v.toOut = v.perOut
 	return true
+}
+
+// setNoise computes the noise of every channel for its gain and the present rate.
+func (c *Chip) setNoise() {
+	for ch := range c.conv.sd {
+		gain := c.regs.gain(ch)
+		c.conv.sd[ch] = noise(gain, c.conv.osr) * float64(gain) / reference
+	}
 }
 
 // modulate writes the inputs as parts of full scale.
@@ -145,12 +155,11 @@ func (v *converter) filter(fast bool) row {
 // DC block, calibration, clipping.
 func (c *Chip) code(ch int, x float64, fast bool) int32 {
 	if !c.opts.Quiet {
-		gain := c.regs.gain(ch)
-		sd := noise(gain, c.conv.osr)
+		sd := c.conv.sd[ch]
 		if fast {
-			sd = startNoise
+			sd = startNoise / reference
 		}
-		x += c.rnd.NormFloat64() * sd * float64(gain) / reference
+		x += c.rnd.NormFloat64() * sd
 	}
 	x = c.blockDC(ch, x)
 	code := int64(math.RoundToEven(x * (1 << 23)))

@@ -12,6 +12,9 @@ const (
 	HostLate FaultKind = iota
 	// SelfReset resets the chip at From, once, as a dip of the supply does.
 	SelfReset
+	// SelfSync starts the conversions anew at From, once, as a pulse on the
+	// SYNC/RESET pin does.
+	SelfSync
 	// Corrupt flips one random bit of an answer with the probability
 	// Probability, for frames in [From, To).
 	Corrupt
@@ -69,10 +72,17 @@ func (c *Chip) once(kind FaultKind, t time.Duration) (Fault, bool) {
 	return Fault{}, false
 }
 
-// resetDue says whether the chip resets by itself now.
-func (c *Chip) resetDue(t time.Duration) bool {
-	_, due := c.once(SelfReset, t)
-	return due
+// upset does what the chip suffers at time t.
+func (c *Chip) upset(t time.Duration) {
+	if len(c.faults) == 0 {
+		return
+	}
+	if _, due := c.once(SelfReset, t); due {
+		c.reset()
+	}
+	if _, due := c.once(SelfSync, t); due {
+		c.resync()
+	}
 }
 
 // beLate lets the time of a late host pass.

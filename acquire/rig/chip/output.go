@@ -40,12 +40,38 @@ func (f *fifo) push(s sample, keepOldest bool) bool {
 	return true
 }
 
-// line is the data-ready pin.
+// queueLength is how many edges the host's queue holds; it drops the oldest.
+const queueLength = 16
+
+// line is the data-ready pin with the host's queue of edges.
 type line struct {
 	busy    bool // a frame is being clocked: no edge is given (8.5.1.5)
-	pending bool // an edge the host has not yet seen
-	at      time.Duration
 	skipped bool // pulse format: the last pulse was left out
+	at      [queueLength]time.Duration
+	n       int // edges in the queue, the oldest first
+}
+
+// fall adds an edge to the queue.
+func (l *line) fall(at time.Duration) {
+	if l.n == queueLength {
+		copy(l.at[:], l.at[1:])
+		l.n--
+	}
+	l.at[l.n] = at
+	l.n++
+}
+
+// take returns the latest edge and empties the queue, or takes the oldest.
+func (l *line) take(oldest bool) time.Duration {
+	if !oldest {
+		at := l.at[l.n-1]
+		l.n = 0
+		return at
+	}
+	at := l.at[0]
+	copy(l.at[:], l.at[1:l.n])
+	l.n--
+	return at
 }
 
 // converted puts a finished conversion into the output and moves the line.
@@ -68,5 +94,5 @@ func (c *Chip) converted(at time.Duration) {
 	if c.line.busy || c.active(CablePulled, at) != nil {
 		return
 	}
-	c.line.pending, c.line.at = true, at
+	c.line.fall(at)
 }
