@@ -88,6 +88,9 @@ var contractMistakes = []mistake{
 	// [limits]
 	{8, `standard = "iso-10816"`, `8: limits.standard = "iso-10816": must be "iso-14694", "iso-20816-3" or "own"`},
 	{8, ``, `7: limits.standard: missing; must be "iso-14694", "iso-20816-3" or "own"`},
+	{8, "standard = \"amca\"\ncategory = 3\n[x]", `8: limits.standard = "amca": must be "iso-14694", "iso-20816-3" or "own"` + "\n" +
+		`9: limits.category = 3: must be "BV-1", "BV-2", "BV-3", "BV-4" or "BV-5", not a whole number` + "\n" +
+		`10: x: unknown table; known here: machine, limits, source, rig, reference, point, buffer, mqtt, alarm`},
 	{9, `category = "BV-6"`, `9: limits.category = "BV-6": must be "BV-1", "BV-2", "BV-3", "BV-4" or "BV-5"`},
 	{9, ``, `7: limits.category: missing; must be "BV-1", "BV-2", "BV-3", "BV-4" or "BV-5"`},
 	{9, "category = \"BV-3\"\ngroup = 1", `10: limits.group = 1: belongs to standard = "iso-20816-3", leave it out`},
@@ -100,8 +103,7 @@ var contractMistakes = []mistake{
 		"\n" + `10: limits.category = "BV-3": belongs to standard = "iso-14694", leave it out`},
 	{8, `standard = "own"`, "7: limits.alarm_mm_s_rms: missing; must be a number from 0.1 to 100 (mm/s rms)\n" +
 		"7: limits.trip_mm_s_rms: missing; must be a number from 0.1 to 100 (mm/s rms)\n" +
-		`9: limits.category = "BV-3": belongs to standard = "iso-14694", leave it out` + "\n" +
-		`10: limits.support = "rigid": belongs to standard = "iso-14694" and "iso-20816-3", leave it out`},
+		`9: limits.category = "BV-3": belongs to standard = "iso-14694", leave it out`},
 	{8, "standard = \"own\"\nalarm_mm_s_rms = 9.0\ntrip_mm_s_rms = 9\n[x]", "10: limits.trip_mm_s_rms = 9: must be above alarm_mm_s_rms, 9\n" +
 		`11: x: unknown table; known here: machine, limits, source, rig, reference, point, buffer, mqtt, alarm`},
 	// [source]

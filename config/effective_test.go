@@ -78,7 +78,6 @@ func drawLimits(t *rapid.T) Limits {
 	case StandardOwn:
 		l.AlarmMMS = rapid.Float64Range(0.1, 50).Draw(t, "alarm")
 		l.TripMMS = rapid.Float64Range(51, 100).Draw(t, "trip")
-		return l
 	}
 	l.Support = rapid.SampledFrom(supports).Draw(t, "support")
 	return l

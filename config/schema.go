@@ -46,7 +46,8 @@ type Limits struct {
 	// Group is the machine group of ISO 20816-3: 1 above 300 kW, 2 from 15 to
 	// 300 kW.
 	Group int `toml:"group,omitempty"`
-	// Support is "rigid" or "flexible".
+	// Support is "rigid" or "flexible"; beside "own" it is not needed and
+	// changes nothing.
 	Support string `toml:"support,omitempty"`
 	// AlarmMMS and TripMMS are the plant's own limits of the overall velocity,
 	// 0.1 to 100 mm/s rms, alarm below trip.

@@ -34,6 +34,8 @@ func (c *checker) validateLimits(l *Limits) {
 	s.choice("standard", required, l.Standard, standards)
 	s.number("quiet_share", optional, l.QuietShare, span{0.01, 1, "share of the alarm limit"})
 	if !s.sound("standard") {
+		s.choice("category", optional, l.Category, categories)
+		s.choice("support", optional, l.Support, supports)
 		return
 	}
 	owner := fmt.Sprintf("standard = %q", l.Standard)
@@ -67,7 +69,7 @@ func (s section) validateOwn(l *Limits) {
 	}
 	s.foreign(`standard = "iso-14694"`, "category")
 	s.foreign(`standard = "iso-20816-3"`, "group")
-	s.foreign(`standard = "iso-14694" and "iso-20816-3"`, "support")
+	s.choice("support", optional, l.Support, supports)
 }
 
 func (c *checker) validateAlarm(a *Alarm) {
