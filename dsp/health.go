@@ -65,8 +65,9 @@ func (h *health) look(f *fitter, p *part) {
 	}
 }
 
-// hasFlat reports whether n samples hold a run at the top or at the bottom that
-// stays within flatBand.
+// hasFlat reports whether n samples have a flat top or bottom: a run of them
+// within flatBand of the extreme, or, in noise that breaks up the runs, far more
+// samples there than in the next band of the same width.
 func hasFlat(x []float32, stride, n, run int) bool {
 	low, high := x[0], x[0]
 	for i := range n {
@@ -82,30 +83,40 @@ func hasFlat(x []float32, stride, n, run int) bool {
 	if band == 0 {
 		return false // flat altogether is another fault
 	}
-	// A run shows at its first, middle and last sample at least, so looking at
-	// each (run-1)/2-th finds every one.
-	top, bottom := high-band, low+band
-	step := max(1, (run-1)/2)
-	for i := 0; i < n; i += step {
+	var top, bottom tally
+	for i := range n {
 		v := x[i*stride]
-		if v >= top && runs(x, stride, n, i, func(v float32) bool { return v >= top }) >= run ||
-			v <= bottom && runs(x, stride, n, i, func(v float32) bool { return v <= bottom }) >= run {
-			return true
-		}
+		top.add(high-v, band)
+		bottom.add(v-low, band)
 	}
-	return false
+	return top.flat(run) || bottom.flat(run)
 }
 
-// runs returns how many samples in a row around i fulfil in.
-func runs(x []float32, stride, n, i int, in func(float32) bool) int {
-	first, last := i, i
-	for first > 0 && in(x[(first-1)*stride]) {
-		first--
+// tally counts the samples near one extreme.
+type tally struct {
+	run, longest int // in a row within a band of the extreme
+	in, beside   int // within it, and within as much again
+}
+
+func (t *tally) add(distance, band float32) {
+	if distance > band {
+		t.run = 0
+		if distance <= 2*band {
+			t.beside++
+		}
+		return
 	}
-	for last < n-1 && in(x[(last+1)*stride]) {
-		last++
+	t.in++
+	t.run++
+	if t.run > t.longest {
+		t.longest = t.run
 	}
-	return last - first + 1
+}
+
+func (t *tally) flat(run int) bool {
+	// A pure sine has 2.4 times as many samples in the extreme band as beside
+	// it, one flattened by its own 3x at most 6 times.
+	return t.longest >= run || t.longest >= 3 && t.in > 8*t.beside+8
 }
 
 func (h *health) clear() { clear(h.flat) }
