@@ -1,0 +1,166 @@
+package main
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"io"
+	"os/signal"
+	"runtime/debug"
+	"syscall"
+
+	"github.com/alecthomas/kong"
+
+	"heavyspot/config"
+)
+
+// The exit statuses.
+const (
+	statusDone    = 0
+	statusFailed  = 1
+	statusUsage   = 2
+	statusDoubted = 3 // done, but something in the data was wrong
+)
+
+// commands are the program's commands and flags.
+type commands struct {
+	Replay replayCommand `cmd:"" help:"Lead a recording through the same steps and print what would be published."`
+
+	Version kong.VersionFlag `help:"Print the version and exit."`
+}
+
+// examples are the examples for the help of a command; "" is the program.
+var examples = map[string][]string{
+	"": {
+		"heavyspot replay -c kiln-fan-2.toml fan.csv     what a recording shows",
+	},
+	"replay": {
+		"heavyspot replay -c kiln-fan-2.toml fan.csv",
+		"heavyspot replay -c kiln-fan-2.toml fan.wav --full-scale-v 1.2 --json",
+		"heavyspot replay -c kiln-fan-2.toml fan.csv --start 2026-03-01T06:31:00Z",
+	},
+}
+
+// environment is what a command works with.
+type environment struct {
+	ctx context.Context
+	// out takes data, talk what is said beside them.
+	out, talk io.Writer
+}
+
+// usageError is an error of usage or configuration.
+type usageError struct{ err error }
+
+func (e usageError) Error() string { return e.err.Error() }
+func (e usageError) Unwrap() error { return e.err }
+
+// doubtError says what in the data was wrong of a command that is done.
+type doubtError struct{ reasons []string }
+
+func (e doubtError) Error() string {
+	text := "done, but something in the data was wrong:"
+	for _, r := range e.reasons {
+		text += "\n  " + r
+	}
+	return text
+}
+
+// execute runs the program and returns its exit status. The first SIGINT or
+// SIGTERM ends a command cleanly, the second ends the program at once.
+func execute(args []string, out, talk io.Writer) int {
+	ctx, stop := signal.NotifyContext(context.Background(), syscall.SIGINT, syscall.SIGTERM)
+	defer stop()
+	context.AfterFunc(ctx, stop)
+
+	if len(args) == 0 {
+		args = []string{"--help"}
+	}
+	exited := false
+	parser, err := kong.New(&commands{},
+		kong.Name("heavyspot"),
+		kong.Description("Advisory monitor of unbalance: no machine protection, never the only thing that stops a fan."),
+		kong.Vars{"version": version()},
+		kong.Writers(out, talk),
+		kong.Exit(func(int) { exited = true }),
+		kong.Help(printHelp),
+		kong.ConfigureHelp(kong.HelpOptions{Compact: true, WrapUpperBound: screenWidth}),
+	)
+	if err != nil {
+		fmt.Fprintf(talk, "heavyspot: %v\n", err)
+		return statusFailed
+	}
+	parsed, err := parser.Parse(args)
+	switch {
+	case exited:
+		return statusDone
+	case err != nil:
+		fmt.Fprintf(talk, "heavyspot: %v\nRun \"heavyspot --help\" for the commands and their flags.\n", err)
+		return statusUsage
+	}
+	err = parsed.Run(&environment{ctx: ctx, out: out, talk: talk})
+	if err != nil {
+		fmt.Fprintf(talk, "heavyspot: %v\n", err)
+	}
+	return statusOf(err)
+}
+
+// statusOf is the exit status that an error means.
+func statusOf(err error) int {
+	var usage usageError
+	var doubt doubtError
+	switch {
+	case err == nil:
+		return statusDone
+	case errors.As(err, &usage):
+		return statusUsage
+	case errors.As(err, &doubt):
+		return statusDoubted
+	}
+	return statusFailed
+}
+
+// printHelp prints the examples and then the usual help.
+func printHelp(options kong.HelpOptions, ctx *kong.Context) error {
+	name := ""
+	if node := ctx.Selected(); node != nil {
+		name = node.Name
+	}
+	fmt.Fprintln(ctx.Stdout, "Examples:")
+	for _, line := range examples[name] {
+		fmt.Fprintln(ctx.Stdout, "  "+line)
+	}
+	fmt.Fprintln(ctx.Stdout)
+	return kong.DefaultHelpPrinter(options, ctx)
+}
+
+// version is the version from the build information, with the revision when it
+// was built from a checkout.
+func version() string {
+	info, ok := debug.ReadBuildInfo()
+	if !ok {
+		return "heavyspot, version unknown"
+	}
+	text := "heavyspot " + info.Main.Version
+	for _, s := range info.Settings {
+		switch {
+		case s.Key == "vcs.revision":
+			text += ", revision " + s.Value[:min(12, len(s.Value))]
+		case s.Key == "vcs.modified" && s.Value == "true":
+			text += " with changes"
+		}
+	}
+	return text + ", " + info.GoVersion
+}
+
+// loadConfig reads a configuration; whatever is wrong with it is a usage error.
+func loadConfig(path string) (*config.Config, error) {
+	cfg, err := config.Load(path)
+	if err == nil {
+		return cfg, nil
+	}
+	var problems *config.Errors
+	if errors.As(err, &problems) {
+		return nil, usageError{fmt.Errorf("the configuration is not accepted:\n%w", err)}
+	}
+	return nil, usageError{err}
+}

@@ -1,0 +1,161 @@
+package main
+
+import (
+	"bufio"
+	"context"
+	"errors"
+	"fmt"
+	"math"
+	"time"
+
+	"heavyspot/acquire"
+	"heavyspot/acquire/recording"
+	"heavyspot/config"
+)
+
+// replayCommand leads a recording through the pipeline.
+type replayCommand struct {
+	Config     string    `short:"c" required:"" type:"path" placeholder:"FILE" help:"Configuration of the machine."`
+	Recording  string    `arg:"" type:"path" help:"CSV or WAV recording."`
+	JSON       bool      `name:"json" help:"Print the messages as JSON Lines."`
+	Start      startTime `placeholder:"TIME" help:"Wall time of the first sample, as 2026-03-01T06:31:00Z; without it the time that the file carries, else minutes count from the first sample."`
+	FullScaleV float64   `name:"full-scale-v" placeholder:"V" help:"Volts of a WAV file's full scale."`
+}
+
+// startTime is a time on the command line.
+type startTime struct{ time.Time }
+
+// UnmarshalText reads an RFC 3339 time.
+func (t *startTime) UnmarshalText(text []byte) error {
+	at, err := time.Parse(time.RFC3339, string(text))
+	if err != nil {
+		return fmt.Errorf("%q: must be like 2026-03-01T06:31:00Z", text)
+	}
+	t.Time = at.UTC()
+	return nil
+}
+
+// Run does it.
+func (c *replayCommand) Run(env *environment) error {
+	cfg, err := loadConfig(c.Config)
+	if err != nil {
+		return err
+	}
+	src, err := openRecording(cfg, c.Recording, recording.Options{FullScaleV: c.FullScaleV, Start: c.Start.Time})
+	if err != nil {
+		return err
+	}
+	defer src.Close()
+	screen := newScreen(env.out, env.talk)
+	out := bufio.NewWriter(screen)
+	sum := &summary{}
+	var shown sink = &jsonSink{machine: &cfg.Machine, out: out}
+	if !c.JSON {
+		shown = newTextSink(cfg, out)
+	}
+	alarms, err := newAlarms(cfg)
+	if err != nil {
+		return usageError{err}
+	}
+	p, err := newPipeline(cfg, src.Format(), alarms, shown, sum, flusher{out})
+	if err != nil {
+		return usageError{err}
+	}
+	progress := newProgress(screen, src)
+	p.onBlock = func(b *acquire.Block) {
+		sum.gap(b, p.format.RateHz)
+		progress.block(p)
+	}
+	err = p.run(env.ctx, src)
+	screen.show("")
+	if err == nil && !c.JSON {
+		sum.print(out)
+	}
+	if ferr := out.Flush(); err == nil {
+		err = ferr
+	}
+	return c.verdict(env.ctx, err, cfg, sum)
+}
+
+// verdict says how a replay ended.
+func (c *replayCommand) verdict(ctx context.Context, err error, cfg *config.Config, sum *summary) error {
+	var damage *recording.Error
+	reasons := sum.doubts(cfg)
+	switch {
+	case errors.As(err, &damage) && sum.minutes > 0:
+		reasons = append(reasons, damage.Error())
+	case err != nil:
+		return err
+	case ctx.Err() != nil:
+		return errors.New("interrupted; what is printed is not the whole recording")
+	}
+	if len(reasons) > 0 {
+		return doubtError{reasons}
+	}
+	return nil
+}
+
+// openRecording opens a recording that fits the configuration; one that does
+// not is a usage error.
+func openRecording(cfg *config.Config, path string, opt recording.Options) (*recording.Source, error) {
+	opt.ExpectRateHz = cfg.Source.RateHz
+	src, err := recording.Open(path, opt)
+	if err != nil {
+		opt.ExpectRateHz = 0
+		other, again := recording.Open(path, opt)
+		if again != nil {
+			return nil, err
+		}
+		rate := other.Format().RateHz
+		other.Close()
+		return nil, usageError{fmt.Errorf("cannot replay %s: it is sampled at %.6g Hz and source.rate_hz is %.6g, they must agree within 0.1 %%",
+			path, rate, cfg.Source.RateHz)}
+	}
+	if err := checkChannels(cfg, src, path); err != nil {
+		src.Close()
+		return nil, usageError{err}
+	}
+	return src, nil
+}
+
+// checkChannels says which channel of the configuration a recording lacks.
+func checkChannels(cfg *config.Config, src *recording.Source, path string) error {
+	for _, p := range cfg.Points {
+		if !src.Has(p.Channel) {
+			return fmt.Errorf("cannot replay %s: it has no column ch%d, which the configuration gives to point %s", path, p.Channel, p.Name)
+		}
+	}
+	if r := cfg.Reference; r != nil && !src.Has(r.Channel) {
+		return fmt.Errorf("cannot replay %s: it has no column ch%d, which the configuration gives to the phase reference", path, r.Channel)
+	}
+	return nil
+}
+
+// flusher is the last sink: it lets each minute be seen at once.
+type flusher struct{ out *bufio.Writer }
+
+func (f flusher) take(*tick) error { return f.out.Flush() }
+
+// progress tells on a terminal how far a replay is.
+type progress struct {
+	screen *screen
+	src    *recording.Source
+	began  time.Time
+	shown  time.Time
+}
+
+func newProgress(s *screen, src *recording.Source) *progress {
+	now := time.Now()
+	return &progress{screen: s, src: src, began: now, shown: now}
+}
+
+func (r *progress) block(p *pipeline) {
+	if !r.screen.live || time.Since(r.shown) < 200*time.Millisecond {
+		return
+	}
+	r.shown = time.Now()
+	done, total := r.src.Progress()
+	data := float64(p.minutes.reached-p.minutes.origin) / p.format.RateHz
+	r.screen.show(fmt.Sprintf("%3.0f %%  %d minutes  %.0f times real time",
+		math.Floor(100*float64(done)/float64(max(total, 1))), p.given, data/r.shown.Sub(r.began).Seconds()))
+}
