@@ -94,7 +94,7 @@ func BenchmarkWriteWAV(b *testing.B) {
 // TestSteadyStateAllocates nothing: blocks reuse their storage.
 func TestSteadyStateAllocates(t *testing.T) {
 	for _, csv := range []bool{true, false} {
-		data := benchFile(t, csv, 40)
+		data := benchFile(t, csv, 14)
 		s, err := newSource(bytes.NewReader(data), "bench", int64(len(data)), Options{})
 		if err != nil {
 			t.Fatal(err)
@@ -106,7 +106,7 @@ func TestSteadyStateAllocates(t *testing.T) {
 			}
 		}
 		read()
-		if n := testing.AllocsPerRun(30, read); n != 0 {
+		if n := testing.AllocsPerRun(10, read); n != 0 {
 			t.Errorf("csv %v: %v allocations per block, want none", csv, n)
 		}
 	}

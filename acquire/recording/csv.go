@@ -16,6 +16,8 @@ import (
 const (
 	// maxLine is the longest line of a CSV file, bytes.
 	maxLine = 1 << 20
+	// minBuffer is the size of the buffer for a small file, bytes.
+	minBuffer = 32 << 10
 	// aheadRows is how many rows the rate is taken from.
 	aheadRows = 4096
 )
@@ -57,8 +59,10 @@ type rowInfo struct {
 }
 
 // openCSV reads the header and enough rows to know the rate.
-func (s *Source) openCSV(r io.ReadSeeker, o Options) error {
-	c := &csvReader{path: s.path, in: bufio.NewReaderSize(r, maxLine)}
+func (s *Source) openCSV(r io.ReadSeeker, size int64, o Options) error {
+	// A line must fit into the buffer, and none is longer than the file.
+	buffer := max(minBuffer, min(maxLine, size+1))
+	c := &csvReader{path: s.path, in: bufio.NewReaderSize(r, int(buffer))}
 	line, err := c.readLine()
 	if err != nil {
 		return c.named(err)
@@ -69,6 +73,14 @@ func (s *Source) openCSV(r io.ReadSeeker, o Options) error {
 		return fault
 	}
 	c.header = *h
+	if c.has, err = o.use(s.path, h.has); err != nil {
+		return err
+	}
+	for i, kind := range c.plan {
+		if kind >= 0 && c.has>>kind&1 == 0 {
+			c.plan[i] = ignoredColumn
+		}
+	}
 	c.held = make([]float32, c.channels)
 	start := c.read
 	hz, err := c.findRate(o)
@@ -282,6 +294,9 @@ func (c *csvReader) parseRow(line []byte, out []float32) error {
 			}
 			out[kind] = v
 		case kind == timeColumn:
+			if !(math.Abs(n.value) <= maxTime) {
+				return c.fail(column, fmt.Sprintf("the time %g s is out of range, allowed is up to %g s", n.value, maxTime))
+			}
 			c.row.t = n
 		}
 		i = next

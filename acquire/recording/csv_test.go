@@ -1,10 +1,12 @@
 package recording
 
 import (
+	"bytes"
 	"context"
 	"errors"
 	"fmt"
 	"io"
+	"math"
 	"os"
 	"path/filepath"
 	"slices"
@@ -180,6 +182,7 @@ func TestCSVFaults(t *testing.T) {
 		{"time never moves", "t_s,ch0\n0,1\n0,1\n0,1\n", 0, 1, "t_s", "does not increase: 0 s follows 0 s"},
 		{"uneven", "t_s,ch0\n" + rows(1000, 6, 100) + "0.100030,1\n", 102, 1, "t_s", "expected 0.100000 s, found 0.100030 s: the steps are not uniform"},
 		{"uneven hole", "t_s,ch0\n" + rows(1000, 6, 100) + "0.155500,1\n", 102, 1, "t_s", "no whole number of steps of 0.001 s"},
+		{"no seconds", "t_s,ch0\n0,1\n1e-12,1\n2e-12,1\n", 0, 1, "t_s", "make 1e+12 Hz, allowed are"},
 		{"too coarse", "t_s,ch0\n" + rows(1024, 3, 100), 0, 1, "t_s", "too few decimals"},
 	} {
 		s, err := openText(c.text, Options{})
@@ -214,6 +217,46 @@ func TestCSVRowsAheadOfFault(t *testing.T) {
 	var b acquire.Block
 	if again := s.Read(context.Background(), &b); again != err {
 		t.Error(again)
+	}
+}
+
+func TestOnlyChannelsInUse(t *testing.T) {
+	text := "t_s,ch0,ch1,ch2\n0,1,,3\n1,4,volt,6\n2,7,1e99,9\n"
+	nan := float32(math.NaN())
+	wav := riff(chunk("fmt ", fmtChunk(3, 3, 1, 32)), chunk("data", le([]float32{1, nan, 3, 4, 5, 6, 7, 8, 9})))
+	for _, data := range []string{text, string(wav)} {
+		s, blocks := mustRead(t, data, Options{Channels: []int{2, 0, 2}})
+		if got := volts(blocks); !slices.Equal(got, []float32{1, 0, 3, 4, 0, 6, 7, 0, 9}) || s.Format().Channels != 3 || s.Has(1) || !s.Has(2) {
+			t.Error(got, s.Format())
+		}
+		for _, c := range []int{3, -1, 64} {
+			var fault *Error
+			if _, err := openText(data, Options{Channels: []int{0, c}}); !errors.As(err, &fault) || !strings.Contains(fault.Reason, "not in the file") {
+				t.Errorf("channel %d: %v", c, err)
+			}
+		}
+	}
+}
+
+// TestAllChannels: as many as there may be.
+func TestAllChannels(t *testing.T) {
+	for _, csv := range []bool{true, false} {
+		var out bytes.Buffer
+		b := acquire.Block{Volts: make([]float32, 64*30)}
+		for i := range b.Volts {
+			b.Volts[i] = float32(i)
+		}
+		w, err := Writer(nil), error(nil)
+		if f := (acquire.Format{RateHz: 10, Channels: 64}); csv {
+			w, err = NewCSVWriter(&out, f)
+		} else {
+			w, err = NewWAVWriter(&out, f)
+		}
+		write(t, w, err, []acquire.Block{b})
+		s, blocks := mustRead(t, out.String(), Options{})
+		if !slices.Equal(volts(blocks), b.Volts) || !s.Has(63) || s.Format().Channels != 64 {
+			t.Errorf("csv %v: %v", csv, s.Format())
+		}
 	}
 }
 

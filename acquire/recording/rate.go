@@ -7,10 +7,16 @@ import (
 	"sort"
 )
 
+// The rates a recording may have, Hz; beyond them t_s is no time in seconds.
+const (
+	minRateHz = 1e-6
+	maxRateHz = 1e9
+)
+
 // findStep sets the step from the times of the first rows, which must be two
 // or more, and returns the rate, Hz. expectHz is preferred where the column
 // cannot tell it from what it shows; 0 means none. A reason means that the
-// times do not increase.
+// times do not increase, or by steps that no converter makes.
 func (t *timebase) findStep(times []number, expectHz float64) (rateHz float64, reason string) {
 	about := medianStep(times)
 	if !(about > 0) {
@@ -27,6 +33,9 @@ func (t *timebase) findStep(times []number, expectHz float64) (rateHz float64, r
 	low, high := stepRange(run, mean, q)
 	var sure bool
 	rateHz, sure = chooseRate(run, low, high, expectHz)
+	if !(rateHz >= minRateHz && rateHz <= maxRateHz) {
+		return 0, fmt.Sprintf("steps of %g s make %g Hz, allowed are %g to %g Hz", (low+high)/2, rateHz, minRateHz, maxRateHz)
+	}
 	t.step, t.spread = 1/rateHz, (high-low)/2
 	if !sure {
 		t.doubt = t.spread

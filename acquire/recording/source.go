@@ -39,6 +39,26 @@ type Options struct {
 	// ExpectRateHz is the sampling rate the file must have within 0.1 %, Hz;
 	// 0 means any.
 	ExpectRateHz float64
+	// Channels are the channels that will be used, counted from 0. The file must
+	// hold them; others are ignored, whatever stands there, and read as 0 V.
+	// Empty means all that the file holds.
+	Channels []int
+}
+
+// use returns the channels of has to read, as bits, or an error if the file
+// lacks one that will be used.
+func (o *Options) use(path string, has uint64) (uint64, error) {
+	if len(o.Channels) == 0 {
+		return has, nil
+	}
+	var wanted uint64
+	for _, c := range o.Channels {
+		if c < 0 || c >= MaxChannels || has>>c&1 == 0 {
+			return 0, &Error{Path: path, Reason: fmt.Sprintf("channel %d, which the configuration uses, is not in the file", c)}
+		}
+		wanted |= 1 << c
+	}
+	return wanted, nil
 }
 
 // Source is a recording as a stream of blocks. Only Progress may be called
@@ -110,7 +130,7 @@ func newSource(r io.ReadSeeker, path string, size int64, o Options) (*Source, er
 	case bytes.Equal(magic[:], []byte("RIFF")), bytes.Equal(magic[:], []byte("RF64")):
 		err = s.openWAV(r, size, o)
 	default:
-		err = s.openCSV(r, o)
+		err = s.openCSV(r, size, o)
 	}
 	if err != nil {
 		return nil, err
@@ -158,8 +178,9 @@ func (o *Options) blockRows(hz float64, channels int) int {
 // the highest channel in the file plus one.
 func (s *Source) Format() acquire.Format { return s.format }
 
-// Has says whether the file holds channel, counted from 0. Channels which it
-// does not hold below its highest one read as 0 V.
+// Has says whether channel, counted from 0, is read: whether the file holds it
+// and Options do not leave it out. Other channels up to the highest one in the
+// file are 0 V.
 func (s *Source) Has(channel int) bool {
 	return channel >= 0 && channel < MaxChannels && s.has>>channel&1 == 1
 }
@@ -177,7 +198,8 @@ func (s *Source) Read(ctx context.Context, b *acquire.Block) error {
 	}
 	if s.err == nil {
 		s.err = s.blocks.readBlock(b)
-		s.done.Store(s.blocks.consumed())
+		// A file that is still being written may give more than it had.
+		s.done.Store(min(s.blocks.consumed(), s.total))
 	}
 	return s.err
 }

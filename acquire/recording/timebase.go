@@ -71,9 +71,6 @@ func (r *resolution) coarsest(run []number) float64 {
 // ahead of it and whether that number is sure. A reason is a wrong time.
 func (t *timebase) follow(n number) (lost int64, exact bool, reason string) {
 	q := t.res.at(n)
-	if !(math.Abs(n.value) <= maxTime) {
-		return 0, false, fmt.Sprintf("the time %g s is out of range, allowed is up to %g s", n.value, maxTime)
-	}
 	if !t.started {
 		t.started, t.last = true, n.value
 		t.lo, t.hi = n.value-q/2, n.value+q/2

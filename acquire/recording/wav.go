@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"io"
 	"math"
+	"math/bits"
 	"slices"
 
 	"heavyspot/acquire"
@@ -26,8 +27,10 @@ type wavReader struct {
 	// left is the number of bytes of samples not yet read, short what the file
 	// lacks of those its header states.
 	left, short int64
-	frame       int64
-	err         error
+	// unused holds the channels to be left at 0 V, as bits.
+	unused uint64
+	frame  int64
+	err    error
 }
 
 // openWAV reads the head of a WAV file which has size bytes.
@@ -44,6 +47,12 @@ func (s *Source) openWAV(r io.ReadSeeker, size int64, o Options) error {
 	if err := w.check(size, o); err != nil {
 		return err
 	}
+	all := uint64(1)<<h.channels - 1
+	var err error
+	if s.has, err = o.use(s.path, all); err != nil {
+		return err
+	}
+	w.unused = all &^ s.has
 	w.scale = o.FullScaleV
 	if w.scale == 0 {
 		w.scale = 1
@@ -59,7 +68,6 @@ func (s *Source) openWAV(r io.ReadSeeker, size int64, o Options) error {
 	}
 	w.perBlock = o.blockRows(hz, h.channels)
 	s.format = acquire.Format{RateHz: hz, Channels: h.channels}
-	s.has = 1<<h.channels - 1
 	s.blocks = w
 	return nil
 }
@@ -104,7 +112,9 @@ func (w *wavReader) readBlock(b *acquire.Block) error {
 		samples := n * w.channels
 		at := len(b.Volts)
 		b.Volts = slices.Grow(b.Volts, samples)[:at+samples]
-		if bad := w.decode(b.Volts[at:], buf); bad >= 0 {
+		w.decode(b.Volts[at:], buf)
+		w.mute(b.Volts[at:])
+		if bad := notFinite(b.Volts[at:]); bad >= 0 {
 			return w.bad(b, at+bad)
 		}
 		w.left -= int64(len(buf))
@@ -144,27 +154,23 @@ func (w *wavReader) bad(b *acquire.Block, n int) error {
 	return nil
 }
 
-// decode turns the samples in buf into volts and returns the place of the
-// first one that is not finite, -1 if there is none.
-func (w *wavReader) decode(volts []float32, buf []byte) int {
+// decode turns the samples in buf into volts.
+func (w *wavReader) decode(volts []float32, buf []byte) {
 	switch {
 	case w.tag == tagPCM && w.bits == 16:
 		for i := range volts {
 			volts[i] = float32(float64(int16(binary.LittleEndian.Uint16(buf[2*i:]))) * w.scale)
 		}
-		return -1
 	case w.tag == tagPCM && w.bits == 24:
 		for i := range volts {
 			s := buf[3*i : 3*i+3]
 			v := int32(s[0])<<8 | int32(s[1])<<16 | int32(s[2])<<24
 			volts[i] = float32(float64(v>>8) * w.scale)
 		}
-		return -1
 	case w.tag == tagPCM:
 		for i := range volts {
 			volts[i] = float32(float64(int32(binary.LittleEndian.Uint32(buf[4*i:]))) * w.scale)
 		}
-		return -1
 	case w.bits == 32:
 		for i := range volts {
 			v := math.Float32frombits(binary.LittleEndian.Uint32(buf[4*i:]))
@@ -176,6 +182,20 @@ func (w *wavReader) decode(volts []float32, buf []byte) int {
 			volts[i] = float32(v * w.scale)
 		}
 	}
+}
+
+// mute sets unused channels of volts, which are whole frames, to 0 V.
+func (w *wavReader) mute(volts []float32) {
+	for set := w.unused; set != 0; set &= set - 1 {
+		for i := bits.TrailingZeros64(set); i < len(volts); i += w.channels {
+			volts[i] = 0
+		}
+	}
+}
+
+// notFinite returns the place of the first value that is infinite or no
+// number, -1 if there is none.
+func notFinite(volts []float32) int {
 	for i, v := range volts {
 		if v-v != 0 {
 			return i
