@@ -4,9 +4,12 @@ import (
 	"path/filepath"
 	"strings"
 	"testing"
+	"time"
 
 	"github.com/google/go-cmp/cmp"
+	"github.com/google/go-cmp/cmp/cmpopts"
 
+	"heavyspot/acquire/ads131m08"
 	"heavyspot/dsp"
 	"heavyspot/rules"
 )
@@ -128,6 +131,39 @@ func TestPaths(t *testing.T) {
 	for name, want := range map[string]string{"": "", "/etc/p": "/etc/p", "p": filepath.Join("plant", "p")} {
 		if got := cfg.FilePath(name); got != want {
 			t.Errorf("file %q is %q, want %q", name, got, want)
+		}
+	}
+}
+
+func TestADS131M08(t *testing.T) {
+	usual := parse(t, good).ADS131M08()
+	if err := usual.Validate(); err != nil {
+		t.Error(err)
+	}
+	if !usual.Crystal || !usual.InputCRC || usual.RateHz != 1000 || usual.ClockHz != 8_192_000 || usual.SPIHz != 8_000_000 {
+		t.Errorf("defaults %+v", usual)
+	}
+	text := spoil(13, "rate_hz = 500\nclock = \"external\"\nclock_hz = 4096000\nspi_hz = 2000000\ninput_crc = false\ngain = [1, 2, 4, 8, 16, 32, 64, 128]")
+	got := parse(t, text).ADS131M08()
+	want := ads131m08.Default()
+	want.RateHz, want.ClockHz, want.SPIHz, want.InputCRC, want.Crystal = 500, 4_096_000, 2_000_000, false, false
+	want.Channels, want.Gains = 8, []int{1, 2, 4, 8, 16, 32, 64, 128}
+	if diff := cmp.Diff(want, got, cmpopts.IgnoreTypes(func() {}, func() bool { return false }, time.Now, func(ads131m08.Fault) {})); diff != "" {
+		t.Error(diff)
+	}
+}
+
+// Ways to sign on at a broker that are right.
+func TestSignOnAtBrokers(t *testing.T) {
+	for _, text := range []string{
+		"brokers = [\"tcp://broker.example:1883\"]\nuser = \"fan\"",
+		"brokers = [\"tcp://127.0.0.1:1883\", \"tcp://[::1]:1883\", \"tcp://localhost:1883\"]\nuser = \"fan\"\npassword_file = \"p\"",
+		"brokers = [\"tcp://broker.example:1883\"]\nuser = \"fan\"\npassword_file = \"p\"\nallow_plain_password = true",
+		"brokers = [\"ssl://broker.example:8883\"]\nuser = \"fan\"\npassword_file = \"p\"\nca_file = \"ca\"\ncert_file = \"c\"\nkey_file = \"k\"",
+		"brokers = []\nembedded_listen = \"[::1]:0\"\nroot = \"plant/fans\"",
+	} {
+		if _, err := Parse("f.toml", []byte(good+"[mqtt]\n"+text)); err != nil {
+			t.Errorf("%s:\n%v", text, err)
 		}
 	}
 }

@@ -12,7 +12,7 @@ import (
 )
 
 // mostBytes bounds the size of a configuration file.
-const mostBytes = 256 << 10
+const mostBytes = 64 << 10
 
 // Load reads and checks the file at path. The error is an *Errors when the file
 // could be read but not accepted; there is no configuration then.

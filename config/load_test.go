@@ -90,7 +90,7 @@ func TestLongFileIsRefused(t *testing.T) {
 	if err := os.WriteFile(path, []byte(good+strings.Repeat("#\n", mostBytes/2)), 0o600); err != nil {
 		t.Fatal(err)
 	}
-	want := path + ":1: the file is too long: must be at most 262144 bytes"
+	want := path + ":1: the file is too long: must be at most 65536 bytes"
 	if _, err := Load(path); err == nil || err.Error() != want {
 		t.Errorf("error %v, want %s", err, want)
 	}
