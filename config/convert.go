@@ -10,6 +10,7 @@ import (
 	"heavyspot/acquire/ads131m08"
 	"heavyspot/dsp"
 	"heavyspot/rules"
+	"heavyspot/rules/alarm"
 )
 
 // DSP returns the configuration of the signal path for a stream of channels
@@ -66,6 +67,21 @@ func (c *Config) Rules() rules.Config {
 		})
 	}
 	return out
+}
+
+// Alarms returns how strict and how patient the alarms are. It panics as Rules
+// does.
+func (c *Config) Alarms() alarm.Config {
+	judged := c.Rules()
+	return alarm.Config{
+		Machine:          c.Machine.Name,
+		AlarmMMS:         judged.Limits.Alarm,
+		TripMMS:          judged.Limits.Trip,
+		QuietShare:       judged.QuietShare,
+		HasReference:     c.Reference != nil,
+		UnbalanceMinutes: c.Alarm.UnbalanceMinutes,
+		ClearMinutes:     c.Alarm.ClearMinutes,
+	}
 }
 
 // ADS131M08 returns the configuration of the converter with all its channels

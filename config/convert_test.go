@@ -12,6 +12,7 @@ import (
 	"heavyspot/acquire/ads131m08"
 	"heavyspot/dsp"
 	"heavyspot/rules"
+	"heavyspot/rules/alarm"
 )
 
 func parse(t *testing.T, text string) *Config {
@@ -132,6 +133,21 @@ func TestPaths(t *testing.T) {
 		if got := cfg.FilePath(name); got != want {
 			t.Errorf("file %q is %q, want %q", name, got, want)
 		}
+	}
+}
+
+// Limits: ISO 14694:2003 table 5, BV-3 rigid.
+func TestAlarms(t *testing.T) {
+	want := alarm.Config{
+		Machine: "kiln-fan-2", AlarmMMS: 7.1, TripMMS: 9, QuietShare: 0.25, HasReference: true,
+		UnbalanceMinutes: 5, ClearMinutes: 7,
+	}
+	text := good + "[alarm]\nunbalance_minutes = 5\nclear_minutes = 7\n"
+	if diff := cmp.Diff(want, parse(t, text).Alarms()); diff != "" {
+		t.Error(diff)
+	}
+	if parse(t, withoutReference()).Alarms().HasReference {
+		t.Error("a reference that is not configured")
 	}
 }
 
