@@ -41,7 +41,7 @@ func stream(t *rapid.T, gaps bool) (acquire.Format, []acquire.Block) {
 			rows += 12
 		} else if gaps && rapid.Bool().Draw(t, "gap") {
 			b.Gap = acquire.Gap{
-				Lost:  rapid.Int64Range(1, 200).Draw(t, "lost"),
+				Lost:  rapid.Int64Range(1, 1000000).Draw(t, "lost"),
 				Exact: rapid.Bool().Draw(t, "exact"),
 				Cause: acquire.Cause(rapid.IntRange(int(acquire.Late), int(acquire.Absent)).Draw(t, "cause")),
 			}

@@ -150,3 +150,29 @@ func TestLongHoleIsNotExact(t *testing.T) {
 		t.Errorf("%+v, %v", last.Gap, err)
 	}
 }
+
+// TestWanderingClock: a clock that warms up and cools down by 3 ppm, written to
+// the microsecond, is uniform enough; one that is off by 0.1 % for a while is
+// not.
+func TestWanderingClock(t *testing.T) {
+	for _, c := range []struct {
+		wander float64
+		sound  bool
+	}{{3e-6, true}, {1e-3, false}} {
+		var b strings.Builder
+		b.WriteString("t_s,ch0\n")
+		at := 0.0
+		for i := range 100000 {
+			fmt.Fprintf(&b, "%.6f,1\n", at)
+			at += 0.001 * (1 + c.wander*math.Sin(float64(i)/5000))
+		}
+		s, err := openText(b.String(), Options{})
+		if err != nil {
+			t.Fatal(err)
+		}
+		_, err = readAll(s)
+		if sound := err == io.EOF; sound != c.sound {
+			t.Errorf("wander %g: %v", c.wander, err)
+		}
+	}
+}
