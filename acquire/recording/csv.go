@@ -125,8 +125,10 @@ func (c *csvReader) findRate(o Options) (float64, error) {
 		c.base.step = 1 / o.ExpectRateHz
 		return o.ExpectRateHz, nil
 	}
-	hz, reason := c.base.findStep(times, o.ExpectRateHz)
+	hz, row, reason := c.base.findStep(times, o.ExpectRateHz)
 	if reason != "" {
+		// Behind the header no line but a row comes ahead of a row.
+		c.line = int64(row) + 2
 		return 0, c.fail(slices.Index(c.plan, timeColumn), reason)
 	}
 	return hz, o.checkRate(c.path, hz)

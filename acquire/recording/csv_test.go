@@ -179,10 +179,11 @@ func TestCSVFaults(t *testing.T) {
 		{"cut off in the time", good + "0.", 5, 2, "ch0", "cut off"},
 		{"time repeats", good + "0.2,7,8\n", 5, 1, "t_s", "expected 0.3 s, found 0.2 s: the time repeats"},
 		{"time goes back", good + "0.1,7,8\n", 5, 1, "t_s", "expected 0.3 s, found 0.1 s: the time goes back"},
-		{"time never moves", "t_s,ch0\n0,1\n0,1\n0,1\n", 0, 1, "t_s", "does not increase: 0 s follows 0 s"},
+		{"time never moves", "t_s,ch0\n0,1\n0,1\n0,1\n", 3, 1, "t_s", "does not increase: 0 s follows 0 s"},
 		{"uneven", "t_s,ch0\n" + rows(1000, 6, 100) + "0.100030,1\n", 102, 1, "t_s", "expected 0.100000 s, found 0.100030 s: the steps are not uniform"},
 		{"uneven hole", "t_s,ch0\n" + rows(1000, 6, 100) + "0.155500,1\n", 102, 1, "t_s", "no whole number of steps of 0.001 s"},
-		{"no seconds", "t_s,ch0\n0,1\n1e-12,1\n2e-12,1\n", 0, 1, "t_s", "make 1e+12 Hz, allowed are"},
+		{"time falls", "t_s,ch0\n0,1\n1,1\n0,1\n-1,1\n-2,1\n", 4, 1, "t_s", "does not increase: 0 s follows 1 s"},
+		{"no seconds", "t_s,ch0\n0,1\n1e-12,1\n2e-12,1\n", 3, 1, "t_s", "make 1e+12 Hz, allowed are"},
 		{"too coarse", "t_s,ch0\n" + rows(1024, 3, 100), 0, 1, "t_s", "too few decimals"},
 	} {
 		s, err := openText(c.text, Options{})

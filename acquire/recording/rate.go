@@ -16,11 +16,16 @@ const (
 // findStep sets the step from the times of the first rows, which must be two
 // or more, and returns the rate, Hz. expectHz is preferred where the column
 // cannot tell it from what it shows; 0 means none. A reason means that the
-// times do not increase, or by steps that no converter makes.
-func (t *timebase) findStep(times []number, expectHz float64) (rateHz float64, reason string) {
+// times do not increase, or by steps that no converter makes; row is then the
+// one to blame, counted from 0.
+func (t *timebase) findStep(times []number, expectHz float64) (rateHz float64, row int, reason string) {
 	about := medianStep(times)
 	if !(about > 0) {
-		return 0, fmt.Sprintf("the time does not increase: %g s follows %g s", times[1].value, times[0].value)
+		row = 1
+		for row < len(times)-1 && times[row].value > times[row-1].value {
+			row++
+		}
+		return 0, row, fmt.Sprintf("the time does not increase: %g s follows %g s", times[row].value, times[row-1].value)
 	}
 	run := longestRun(times, about)
 	// Ties rounded up and down would leave a single step, lost to the rounding
@@ -34,13 +39,13 @@ func (t *timebase) findStep(times []number, expectHz float64) (rateHz float64, r
 	var sure bool
 	rateHz, sure = chooseRate(run, low, high, expectHz)
 	if !(rateHz >= minRateHz && rateHz <= maxRateHz) {
-		return 0, fmt.Sprintf("steps of %g s make %g Hz, allowed are %g to %g Hz", (low+high)/2, rateHz, minRateHz, maxRateHz)
+		return 0, 1, fmt.Sprintf("steps of %g s make %g Hz, allowed are %g to %g Hz", (low+high)/2, rateHz, minRateHz, maxRateHz)
 	}
 	t.step, t.spread = 1/rateHz, (high-low)/2
 	if !sure {
 		t.doubt = t.spread
 	}
-	return rateHz, ""
+	return rateHz, 0, ""
 }
 
 // medianStep returns a step that holes and rounding have little influence on:
