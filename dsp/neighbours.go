@@ -17,6 +17,7 @@ type neighbours struct {
 	// spectrum is the power summed over points, each over its noise.
 	spectrum []float64
 	sorted   []float64
+	points   float64 // points in the spectrum
 }
 
 // aLine is a line under trial: its frequency against the mean turn rate, Hz,
@@ -31,6 +32,17 @@ const (
 	ownBins = 1.5
 	// fewestParts is the number of parts from which lines are looked for.
 	fewestParts = 24
+	// mostOwn is how many peaks are looked at that turn out to be the machine's.
+	mostOwn = 4
+	// alike is the correlation over the points from which a line has the
+	// pattern of the machine's own vector: two unrelated patterns over six
+	// points reach it once in 4,000.
+	alike = 0.9
+	// farBins is the distance from which a slow change of the machine's own
+	// vector is out of the question, and spreadOut the share of the power around
+	// a line that a single frequency may leave.
+	farBins   = 12.0
+	spreadOut = 0.4
 )
 
 func newNeighbours() *neighbours {
@@ -71,34 +83,91 @@ func (nb *neighbours) find(s *series, use []bool, hz float64) []aLine {
 		return nil
 	}
 	var lines []aLine
-	for len(lines) < mostLine {
-		offset, ok := nb.peak(s, use, hz, lines)
+	var own []float64
+	for len(lines) < mostLine && len(own) < mostOwn {
+		offset, ok := nb.peak(s, use, hz, lines, own)
 		if !ok {
 			break
 		}
-		lines = append(lines, aLine{offset: offset})
-		for round := 0; round < 1+len(lines); round++ {
-			for i := range lines {
-				nb.refine(s, use, hz, lines, i)
+		trial := append(lines[:len(lines):len(lines)], aLine{offset: offset})
+		for round := 0; round < 1+len(trial); round++ {
+			for i := range trial {
+				nb.refine(s, use, hz, trial, i)
 			}
 		}
+		if nb.isOwn(s, use, hz, trial) {
+			own = append(own, offset)
+			continue
+		}
+		lines = trial
 	}
 	return lines
 }
 
-// peak looks for a line in what is left of the 1x series after the mean and
-// the known lines.
-func (nb *neighbours) peak(s *series, use []bool, hz float64, lines []aLine) (offset float64, ok bool) {
-	duration := s.centre[len(s.centre)-1] - s.centre[0]
-	step := duration / float64(len(s.centre)-1)
+// isOwn reports whether the last of the lines is rather the machine's own
+// vector changing within the minute: it then has the pattern of the machine's
+// vector over the points, or is spread out close to 1x where a machine of
+// steady speed gives one bin. A part of the 1x that creeps round the shaft, or a
+// loose bearing, must be seen as such and not be fitted away.
+func (nb *neighbours) isOwn(s *series, use []bool, hz float64, lines []aLine) bool {
+	last := len(lines) - 1
+	fit := newCombined(s, lines, hz, nil)
+	var cross complex128
+	var own, other, points float64
+	for p := range s.velocity {
+		if !use[p] {
+			continue
+		}
+		fit.solve(s.velocity[p][0])
+		v, n := fit.vector[0], fit.vector[1+last]
+		cross += n * cmplx.Conj(v)
+		own += sqAbs(v)
+		other += sqAbs(n)
+		points++
+	}
+	if points >= 3 && sqAbs(cross) > alike*alike*own*other {
+		return true
+	}
+	step := nb.step(s)
+	at := int(math.Round(lines[last].offset * slots * step))
+	if math.Abs(lines[last].offset)*slots*step > farBins {
+		return false
+	}
+	nb.look(s, use, hz, lines[:last])
+	before := nb.around(at, s)
+	nb.look(s, use, hz, lines)
+	return nb.around(at, s) > spreadOut*before
+}
+
+// around returns the power of the spectrum over its noise within a few bins.
+func (nb *neighbours) around(at int, s *series) float64 {
+	sum := 0.0
+	own := int(math.Ceil(ownBins * slots * nb.step(s) / s.duration()))
+	for m := at - 4; m <= at+4; m++ {
+		if m > own || m < -own {
+			sum += max(0, nb.spectrum[(m+slots)%slots]-nb.points)
+		}
+	}
+	return sum
+}
+
+func (s *series) duration() float64 { return s.centre[len(s.centre)-1] - s.centre[0] }
+
+// step returns the mean distance of the parts, s.
+func (nb *neighbours) step(s *series) float64 { return s.duration() / float64(len(s.centre)-1) }
+
+// look fills the spectrum with what is left of the 1x series after the mean
+// and the lines, each point over its own noise.
+func (nb *neighbours) look(s *series, use []bool, hz float64, lines []aLine) {
+	step := nb.step(s)
 	clear(nb.spectrum)
-	points := 0.0
+	nb.points = 0
 	fit := newCombined(s, lines, hz, nil)
 	for p := range s.velocity {
 		if !use[p] {
 			continue
 		}
-		points++
+		nb.points++
 		clear(nb.slot)
 		fit.solve(s.velocity[p][0])
 		for k, r := range fit.residual {
@@ -111,18 +180,33 @@ func (nb *neighbours) peak(s *series, use []bool, hz float64, lines []aLine) (of
 		}
 		nb.addSpectrum()
 	}
-	own := ownBins * slots * step / duration
-	best := points + 6*math.Sqrt(points) + 10 // under 1e-4 false alarms a minute
+}
+
+// peak returns the offset of the highest line that stands out of the noise,
+// other than those that were found to be the machine's own.
+func (nb *neighbours) peak(s *series, use []bool, hz float64, lines []aLine, not []float64) (offset float64, ok bool) {
+	nb.look(s, use, hz, lines)
+	bin := 1 / (slots * nb.step(s))                 // Hz
+	best := nb.points + 6*math.Sqrt(nb.points) + 10 // under 1e-4 false alarms a minute
 	for m, v := range nb.spectrum {
-		signed := m
+		at := float64(m) * bin
 		if m > slots/2 {
-			signed = m - slots
+			at -= slots * bin
 		}
-		if math.Abs(float64(signed)) > own && v > best {
-			best, offset, ok = v, float64(signed)/(slots*step), true
+		if v > best && math.Abs(at) > ownBins/s.duration() && !near(at, not, 2*bin) {
+			best, offset, ok = v, at, true
 		}
 	}
 	return offset, ok
+}
+
+func near(x float64, places []float64, within float64) bool {
+	for _, p := range places {
+		if math.Abs(x-p) <= within {
+			return true
+		}
+	}
+	return false
 }
 
 // addSpectrum adds the spectrum of nb.slot over its own noise level, which is
@@ -130,21 +214,21 @@ func (nb *neighbours) peak(s *series, use []bool, hz float64, lines []aLine) (of
 func (nb *neighbours) addSpectrum() {
 	nb.fft.Coefficients(nb.out, nb.slot)
 	for m, c := range nb.out {
-		nb.sorted[m] = real(c)*real(c) + imag(c)*imag(c)
+		nb.sorted[m] = sqAbs(c)
 	}
 	level := median(nb.sorted) / math.Ln2
 	if level == 0 {
 		return
 	}
 	for m, c := range nb.out {
-		nb.spectrum[m] += (real(c)*real(c) + imag(c)*imag(c)) / level
+		nb.spectrum[m] += sqAbs(c) / level
 	}
 }
 
 // refine moves line i to where the fit leaves least, first in frequency, then
 // in sweep, then once more in frequency.
 func (nb *neighbours) refine(s *series, use []bool, hz float64, lines []aLine, i int) {
-	duration := s.centre[len(s.centre)-1] - s.centre[0]
+	duration := s.duration()
 	fit := newCombined(s, lines, hz, nil)
 	cost := func(l aLine) float64 {
 		fit.replace(i, l)

@@ -15,8 +15,8 @@ func base(seed uint64) signal {
 		mms: [3]float64{4, 0.5, 0.2}, lag: [3]float64{123, 50, 310}}
 }
 
-// near fails unless the first point's 1x is within the bounds.
-func near(t *testing.T, s *signal, m dsp.Minute, percent, degrees float64) {
+// nearTruth fails unless the first point's 1x is within the bounds.
+func nearTruth(t *testing.T, s *signal, m dsp.Minute, percent, degrees float64) {
 	t.Helper()
 	o := m.Points[0].Order[0]
 	da, dl := 100*(o.RMS/s.mms[0]-1), angle(o.Lag, s.lag[0])
@@ -38,7 +38,7 @@ func TestPulsesMendedAndRejected(t *testing.T) {
 				m := s.read(t)
 				// Jitter itself scatters the mean phase: 0.5 rows are 4.4 degrees,
 				// 0.12 over the turns of a minute.
-				near(t, &s, m, 0.3, 0.3+0.4*c.jitter)
+				nearTruth(t, &s, m, 0.3, 0.3+0.4*c.jitter)
 				want := dsp.ReferenceGood
 				if c.missing+c.extra > 0 {
 					want = dsp.ReferenceDoubtful
@@ -83,7 +83,7 @@ func TestGaps(t *testing.T) {
 		}
 	}
 	m := e.Close(int64(len(v)/stride), time.Time{}, false)
-	near(t, &s, m, 0.3, 0.3)
+	nearTruth(t, &s, m, 0.3, 0.3)
 	n := float64(len(v)/stride - 1)
 	if d := m.Coverage - (1 - float64(lost)/n); math.Abs(d) > 1e-9 {
 		t.Errorf("coverage %.6f, want %.6f", m.Coverage, 1-float64(lost)/n)

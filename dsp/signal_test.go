@@ -63,7 +63,11 @@ func (s *signal) render() []float32 {
 	n := int(s.rate * s.seconds)
 	stride := s.points + 1
 	out := make([]float32, n*stride)
-	nphase := r.Float64() * 2 * math.Pi
+	// The neighbour is felt in another way at each point.
+	nphase := make([]float64, s.points)
+	for p := range nphase {
+		nphase[p] = r.Float64() * 2 * math.Pi
+	}
 	for i := range n {
 		t := (float64(i) + 0.5) / s.rate
 		theta, hz := 2*math.Pi*s.angle(t), s.turnRate(t)
@@ -73,12 +77,13 @@ func (s *signal) render() []float32 {
 			// Acceleration leads velocity by 90 degrees.
 			x += math.Sqrt2 * s.mms[o] * w / gravityMM * sensitivity * -math.Sin(float64(o+1)*theta-s.lag[o]*math.Pi/180)
 		}
-		if s.neighbour != 0 {
-			w := 2 * math.Pi * s.hz
-			x += s.neighbour * math.Sqrt2 * s.mms[0] * w / gravityMM * sensitivity * math.Cos(2*math.Pi*s.hz*(1+s.away)*t+nphase)
-		}
+		beside := s.neighbour * math.Sqrt2 * s.mms[0] * 2 * math.Pi * s.hz / gravityMM * sensitivity
 		for p := range s.points {
-			out[i*stride+p] = float32(x + s.noise*r.NormFloat64())
+			y := x + s.noise*r.NormFloat64()
+			if beside != 0 {
+				y += beside * math.Cos(2*math.Pi*s.hz*(1+s.away)*t+nphase[p])
+			}
+			out[i*stride+p] = float32(y)
 		}
 	}
 	s.pulses(out, r, n, stride)
