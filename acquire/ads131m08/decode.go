@@ -1,6 +1,7 @@
 package ads131m08
 
 import (
+	"encoding/binary"
 	"errors"
 	"fmt"
 	"math"
@@ -57,14 +58,32 @@ func (d *Decoder) Decode(f *[FrameBytes]byte, dst []float32) (Status, error) {
 	if frameCRC(f) != uint16(f[checkedBytes])<<8|uint16(f[checkedBytes+1]) {
 		return 0, frameError(f)
 	}
-	dst = dst[:d.channels]
-	for ch := range dst {
-		// Placing the 24 bits at the top makes the shift extend the sign.
-		b := f[3+3*ch : 6+3*ch : 6+3*ch]
-		code := int32(uint32(b[0])<<24|uint32(b[1])<<16|uint32(b[2])<<8) >> 8
-		dst[ch] = float32(float64(code) * d.scale[ch&7])
+	if d.channels == MaxChannels {
+		d.all(f, (*[MaxChannels]float32)(dst))
+	} else {
+		for ch := range dst[:d.channels] {
+			dst[ch] = volts(binary.BigEndian.Uint32(f[3+3*ch:]), d.scale[ch])
+		}
 	}
 	return Status(f[0])<<8 | Status(f[1]), nil
+}
+
+// all decodes eight channels; constant places need no check of a bound.
+func (d *Decoder) all(f *[FrameBytes]byte, v *[MaxChannels]float32) {
+	v[0] = volts(binary.BigEndian.Uint32(f[3:]), d.scale[0])
+	v[1] = volts(binary.BigEndian.Uint32(f[6:]), d.scale[1])
+	v[2] = volts(binary.BigEndian.Uint32(f[9:]), d.scale[2])
+	v[3] = volts(binary.BigEndian.Uint32(f[12:]), d.scale[3])
+	v[4] = volts(binary.BigEndian.Uint32(f[15:]), d.scale[4])
+	v[5] = volts(binary.BigEndian.Uint32(f[18:]), d.scale[5])
+	v[6] = volts(binary.BigEndian.Uint32(f[21:]), d.scale[6])
+	v[7] = volts(binary.BigEndian.Uint32(f[24:]), d.scale[7])
+}
+
+// volts turns a word of 24 bits with the byte behind it into volts: the shift
+// drops that byte and extends the sign.
+func volts(word uint32, scale float64) float32 {
+	return float32(float64(int32(word)>>8) * scale)
 }
 
 // frameError says what is wrong with a frame whose check sum does not match.
