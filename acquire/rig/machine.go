@@ -96,7 +96,7 @@ func (m *Machine) chooseStep() error {
 		return err
 	}
 	h := min(longest, stability/stiffest)
-	if h < shortest {
+	if !(h >= shortest) {
 		return fmt.Errorf("rig: the stiffest mode has %.0f rad/s, the integration can follow up to %.0f", stiffest, stability/shortest)
 	}
 	m.perStep, m.subSteps = 1, 1

@@ -175,3 +175,18 @@ func TestChangesWhileRunning(t *testing.T) {
 	}
 	check("after a refused change")
 }
+
+// TestFlowIsBroadband: the flow's velocity grows with its force, is no order of the
+// shaft, and is a fraction of a percent at 1x.
+func TestFlowIsBroadband(t *testing.T) {
+	level := func(force float64) observed {
+		c := fan()
+		c.Faults.Flow.ForceN = force
+		return observe(start(t, c), 20)[0]
+	}
+	a, b := level(1000), level(2000)
+	near(t, "velocity at twice the force", b.rms/a.rms, 2, 0.01)
+	if share := math.Pow(a.order[1].RMS/a.rms, 2); share > 0.02 || a.rms < 0.05 {
+		t.Errorf("flow of 1000 N: %.3f mm/s, %.4f of the power at 1x", a.rms, share)
+	}
+}

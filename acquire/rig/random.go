@@ -56,9 +56,9 @@ type Case struct {
 	Points []Point
 }
 
-// maxDraws bounds the draws for one machine; the rarest kind needs about a
-// hundredth of it on average.
-const maxDraws = 20000
+// maxDraws bounds the draws for one machine; the rarest kind, the overhung rotor,
+// needs eight on average.
+const maxDraws = 5000
 
 // Random draws a machine of a kind, with six sensors on channels 0 to 5 and the
 // phase reference on channel 6. Apart from resonance all kinds run clear of the

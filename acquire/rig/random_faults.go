@@ -70,8 +70,11 @@ func (d *draw) mainCause() Config {
 		}
 		c.Faults.LooseRotor.PositionM += span{-0.2, 0.2}.even(d.r) * d.span
 	case OverhungRotor:
-		one.PositionM += span{-0.2, 0.3}.even(d.r) * d.radius
-		c.Unbalances = []Unbalance{one}
+		// Two planes of the impeller: usually static plus couple unbalance.
+		other := Unbalance{KgM: span{0.1, 0.7}.even(d.r), PositionM: centre, AngleDeg: d.turnEven()}
+		one.PositionM += span{0, 0.3}.even(d.r) * d.radius
+		other.PositionM -= span{0, 0.3}.even(d.r) * d.radius
+		c.Unbalances = []Unbalance{one, other}
 	case Static, Resonant:
 		c.Unbalances = []Unbalance{one}
 	default:

@@ -33,16 +33,23 @@ func each(t *testing.T, k Kind, look func(c Case)) {
 // lags V by 90 degrees when it turns clockwise (contract of the vectors).
 func TestForwardWhirl(t *testing.T) {
 	for _, k := range []Kind{Static, Couple} {
+		bearings, other := 0, 0
 		each(t, k, func(c Case) {
 			want := 90 * c.Config.Rotor.sense()
 			for e := DriveEnd; e <= NonDriveEnd; e++ {
 				v, h := vectorOf(c.Points, e, Vertical), vectorOf(c.Points, e, Horizontal)
-				// A bearing near a node of the motion may turn otherwise.
-				if d := apart(h.Lag-v.Lag, want); d > 30 && min(v.RMS, h.RMS) > 0.3*worst(c.Points, 1, false) {
-					t.Errorf("V %.2f@%.0f, H %.2f@%.0f: want H to lag V by %.0f", v.RMS, v.Lag, h.RMS, h.Lag, want)
+				bearings++
+				if apart(h.Lag-v.Lag, want) > 30 {
+					other++
 				}
 			}
 		})
+		// A bearing near a node, or a speed between the natural frequencies of the
+		// two directions, turns the other way; section 5 puts such cases at 10 to
+		// 20 % in practice (S3), and ours, clear of resonance, are rarer.
+		if share := float64(other) / float64(bearings); share > 0.05 {
+			t.Errorf("%v: H does not lag V by 90 with the rotation at %.3f of the bearings", k, share)
+		}
 	}
 }
 

@@ -70,7 +70,7 @@ func TestNoiseDensity(t *testing.T) {
 
 func TestClippingAndFailures(t *testing.T) {
 	for _, c := range []struct {
-		s        Sensor
+		s               Sensor
 		lowest, highest float64
 	}{
 		{Sensor{VoltsPerG: 10, ClipV: 0.3}, -0.3, 0.3},
