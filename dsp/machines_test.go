@@ -16,8 +16,15 @@ import (
 	"heavyspot/rules"
 )
 
-// machineRate is the sample rate of the simulated machines.
-const machineRate = 1000
+// rateFor returns the sample rate at which a machine's pulse is three rows wide,
+// as the reference needs it.
+func rateFor(c rig.Config) float64 {
+	rate := 1000.0
+	for rate < 4000 && c.Reference != nil && c.Reference.WidthDeg/360*rate/(c.Drive.RPM/60) < 3 {
+		rate *= 2
+	}
+	return rate
+}
 
 // dspConfig tells the signal path what is wired to a simulated machine.
 func dspConfig(c rig.Config, f acquire.Format) dsp.Config {
@@ -48,7 +55,8 @@ func minutesOf(t *testing.T, c rig.Config, seed uint64, n int, seconds float64) 
 	if err != nil {
 		t.Fatal(err)
 	}
-	src, err := rig.NewSource(m, rig.Sampling{RateHz: machineRate, Smooth: 1, Duration: time.Duration(float64(n) * seconds * 1e9)})
+	rate := rateFor(c)
+	src, err := rig.NewSource(m, rig.Sampling{RateHz: rate, Smooth: 1, Duration: time.Duration(float64(n) * seconds * 1e9)})
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -67,7 +75,7 @@ func minutesOf(t *testing.T, c rig.Config, seed uint64, n int, seconds float64) 
 		}
 		e.Push(b.First, b.Volts)
 		rows += int64(b.Rows(src.Format().Channels))
-		if rows >= int64(float64(len(out)+1)*seconds*machineRate) {
+		if rows >= int64(float64(len(out)+1)*seconds*rate) {
 			out = append(out, e.Close(rows, time.Time{}, false))
 		}
 	}
@@ -77,7 +85,7 @@ func minutesOf(t *testing.T, c rig.Config, seed uint64, n int, seconds float64) 
 // the signal path and the rules. The vectors must be those of the exact steady
 // response, no verdict may be wrong, and few may stay undetermined.
 func TestMachines(t *testing.T) {
-	n := 5
+	n := 1
 	if s := os.Getenv("HEAVYSPOT_MACHINES"); s != "" {
 		n, _ = strconv.Atoi(s)
 	}
@@ -94,7 +102,7 @@ func TestMachines(t *testing.T) {
 			got := map[rules.Verdict]int{}
 			for k := range n {
 				c := rig.Random(kind, r)
-				minutes := minutesOf(t, c.Config, uint64(k)+1, 3, 30)
+				minutes := minutesOf(t, c.Config, uint64(k)+1, 2, 60)
 				j, err := rules.NewJudge(rulesConfig(&c))
 				if err != nil {
 					t.Fatal(err)
