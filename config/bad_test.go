@@ -132,7 +132,7 @@ var contractMistakes = []mistake{
 	{30, `volts_per_g = -0.1`, `30: point[1].volts_per_g = -0.1: must be from 0.0001 to 100 (volts per standard gravity)`},
 	{30, ``, `25: point[1].volts_per_g: missing; must be a number from 0.0001 to 100 (volts per standard gravity)`},
 	{30, `milli_volts_per_g = 50`, "25: point[1].volts_per_g: missing; must be a number from 0.0001 to 100 (volts per standard gravity)\n" +
-		`30: point[1].milli_volts_per_g: unknown key; known here: name, bearing, direction, channel, volts_per_g, inverted, highpass_hz`},
+		`30: point[1].milli_volts_per_g: unknown key; known here: name, bearing, direction, channel, volts_per_g, inverted, highpass_hz, full_scale_v`},
 	{30, "volts_per_g = 0.1\nhighpass_hz = 11", `31: point[1].highpass_hz = 11: must be from 0 to 10 (Hz, 0 = none)`},
 	{30, "volts_per_g = 0.1\nmax_mb = 64", `31: point[1].max_mb: unknown key here; it belongs in [buffer]`},
 	{31, "[[point]]\nname = \"x\"\nbearing = \"drive-end\"\ndirection = \"vertical\"\nchannel = 2\nvolts_per_g = 1",

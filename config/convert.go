@@ -33,6 +33,7 @@ func (c *Config) DSP(rateHz float64, channels int) dsp.Config {
 			VoltsPerG:  p.VoltsPerG,
 			Inverted:   p.Inverted,
 			HighpassHz: p.HighpassHz,
+			FullScaleV: p.FullScaleV,
 		})
 	}
 	return out

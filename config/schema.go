@@ -133,6 +133,9 @@ type Point struct {
 	// HighpassHz is the corner of the chain's first-order high pass, 0 to 10
 	// Hz; 0 (default) means none.
 	HighpassHz float64 `toml:"highpass_hz"`
+	// FullScaleV is the voltage at which the sensor's chain saturates, either
+	// way from zero, 0 to 100 V; 0 (default) means where the converter does.
+	FullScaleV float64 `toml:"full_scale_v"`
 }
 
 // Buffer is the rolling buffer on the card.

@@ -50,6 +50,7 @@ func (c *checker) validatePoint(path string, p *Point, channels span) {
 	s.number("volts_per_g", required, p.VoltsPerG, span{0.0001, 100, "volts per standard gravity"})
 	s.flag("inverted")
 	s.number("highpass_hz", optional, p.HighpassHz, span{0, 10, "Hz, 0 = none"})
+	s.number("full_scale_v", optional, p.FullScaleV, span{0, 100, "volts, 0 = where the converter saturates"})
 }
 
 // validateUnlike checks that names, places and channels are used once.
