@@ -19,6 +19,10 @@ type signs struct {
 	share value
 	// second and third are the amplitudes of 2x and 3x against 1x over all points.
 	second, third value
+	// rough is the amplitude of 2x and 3x together against 1x in the radial
+	// direction that has more of them, and roughRatio that amplitude against the
+	// other direction's.
+	rough, roughRatio value
 	// neighbour is the strongest line beside 1x against 1x, over the radial points.
 	neighbour value
 	// turning is by how much horizontal lags vertical at each bearing in the
@@ -33,8 +37,8 @@ type signs struct {
 	both         angle
 	disagreement value
 	inPhase      value
-	// axial is the rms of the axial 1x against the radial one; axialEnds the
-	// ends' phase difference there, 0 to 180 degrees.
+	// axial is the rms of the axial 1x of both bearings against the radial one;
+	// axialEnds the ends' phase difference there, 0 to 180 degrees.
 	axial     value
 	axialEnds angle
 	// wander is the unsteadiness of the 1x lag within the minute and creep that
@@ -95,8 +99,9 @@ func (s *signs) orders(p *picture) {
 		s.share = value{x: radial / overall, ok: true}
 	}
 	s.second, s.third = harmonic(p, 2), harmonic(p, 3)
-	if na == 0 {
-		return
+	s.roughness(p)
+	if na < len(p.at) {
+		return // a bearing that floats axially shows little, whatever the cause
 	}
 	s.axial = value{x: math.Sqrt(axial / float64(na) / (radial / float64(nr))), ok: true}
 	if axial > 0 {
@@ -110,6 +115,33 @@ func harmonic(p *picture, order int) value {
 	first, _ := p.power(1, Vertical, Horizontal, Axial)
 	other, _ := p.power(order, Vertical, Horizontal, Axial)
 	return value{x: math.Sqrt(other / first), ok: first > 0}
+}
+
+// roughness measures the harmonics in each radial direction on its own.
+func (s *signs) roughness(p *picture) {
+	var harmonics, first [2]float64
+	for d := Vertical; d <= Horizontal; d++ {
+		for order := 2; order <= dsp.Orders; order++ {
+			sum, _ := p.power(order, d)
+			harmonics[d] += sum
+		}
+		first[d], _ = p.power(1, d)
+	}
+	if first[Vertical] == 0 || first[Horizontal] == 0 {
+		return
+	}
+	d := Vertical
+	if harmonics[Horizontal]/first[Horizontal] > harmonics[Vertical]/first[Vertical] {
+		d = Horizontal
+	}
+	s.rough = value{x: math.Sqrt(harmonics[d] / first[d]), ok: true}
+	if harmonics[d] > 0 {
+		// The floor keeps a harmonic of zero from making the ratio infinite.
+		other := max(harmonics[1-d], 1e-4*harmonics[d])
+		s.roughRatio = value{x: math.Sqrt(harmonics[d] / other), ok: true}
+	} else {
+		s.roughRatio = value{x: 1, ok: true}
+	}
 }
 
 // lines measures the strongest line of another machine against 1x.
@@ -144,18 +176,34 @@ func (s *signs) orbit(p *picture, b int) {
 	s.weight[b] = value{x: (v*v + h*h) / radial, ok: true}
 }
 
-// unsteadiness weighs the wander of the radial points with their power.
+// telling is how well a lag must be known, degrees, for its wander relative to
+// another point to tell anything.
+const telling = 3.0
+
+// unsteadiness weighs the wander of the radial points with their power. Without
+// a reference the lags are relative to a point, and a vector that turns as a
+// whole shows only against what does not turn with it: then the worst of all
+// points counts.
 func (s *signs) unsteadiness(p *picture) {
-	var sum, weight float64
+	var sum, weight, worst float64
 	for b := range p.at {
-		for d := Vertical; d <= Horizontal; d++ {
+		for d := range p.at[b] {
 			at := &p.at[b][d]
-			w := sq(at.amplitude())
-			sum += w * at.wander
-			weight += w
+			if at.good && at.lagSD < telling {
+				worst = max(worst, at.wander)
+			}
+			if Direction(d) != Axial {
+				w := sq(at.amplitude())
+				sum += w * at.wander
+				weight += w
+			}
 		}
 	}
-	if weight > 0 {
+	switch {
+	case weight == 0:
+	case s.referenced:
 		s.wander = value{x: sum / weight, ok: true}
+	default:
+		s.wander = value{x: worst, ok: true}
 	}
 }

@@ -14,8 +14,8 @@ const (
 	// sameSpeed is how far two minutes' speeds may differ, as a share, for
 	// their phases to be compared: near a resonance the phase follows the speed.
 	sameSpeed = 0.003
-	// fewestSteps is the number of steps from minute to minute from which their
-	// middle value means something.
+	// fewestSteps is the number of steps from minute to minute from which they
+	// tell anything.
 	fewestSteps = 3
 )
 
@@ -40,10 +40,10 @@ func (h *memory) add(m *dsp.Minute, p *picture) {
 	h.rpm = append(h.rpm, m.Speed.Mean)
 }
 
-// creep returns the middle of the phase's steps from minute to minute, degrees.
-// The middle value and not the mean, because a lump that lets go makes one
-// large step and leaves the phase as steady as before, while a rotor that moves
-// on its shaft or a rub makes many.
+// creep returns the size of the phase's steps from minute to minute, degrees:
+// the largest but for a quarter of them, at least one. A lump that lets go
+// makes one large step and leaves the phase as steady as before, while a rotor
+// that moves on its shaft or a rub makes many.
 func (h *memory) creep() value {
 	var steps []value
 	for i := 1; i < len(h.rpm); i++ {
@@ -66,7 +66,7 @@ func (h *memory) creep() value {
 		}
 		return 0
 	})
-	return steps[(len(steps)-1)/2]
+	return steps[len(steps)-1-max(1, len(steps)/4)]
 }
 
 // step returns the size of the turn of all radial vectors together from one

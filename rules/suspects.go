@@ -25,6 +25,11 @@ const (
 	// practice, to be given low weight); some2x and some3x are seen beside
 	// other signs (S4: 2x is 30 to 200 % of 1x with a bent shaft).
 	most2x, some2x, some3x, double2x = 0.5, 0.3, 0.3, 1.0
+	// oneSided is the amplitude of the harmonics in one radial direction against
+	// the other's, from which, at some2x of 1x or more, a support that lifts is
+	// suspected (common practice: a support that opens and closes is stiff one
+	// way and soft the other, and makes harmonics in that direction).
+	oneSided = 3.0
 	// highAxial is the axial 1x against the radial one from which it needs a
 	// cause (common practice; S5 gives 0.5 for misalignment, S4 only "high").
 	highAxial, misalignedAxial = 0.3, 0.5
@@ -39,15 +44,23 @@ const (
 	// phase may be, from lopsided on, before a resonance is possible (common
 	// practice: damping turns the phase only near a resonance).
 	amplified, turnedOff = 8.0, 15.0
+	// halfTurned is how far from 90 degrees the phase is when the speed lies
+	// between the natural frequencies of the two directions (S2: 180 in total
+	// across a resonance); the ratio besideResonance then means that one is near.
+	halfTurned, besideResonance = 120.0, 3.0
 	// mostWander is the unsteadiness of the lag in a minute, and mostCreep its
 	// step from minute to minute, up to which it is steady (common practice).
-	mostWander, mostCreep = 10.0, 10.0
+	mostWander, mostCreep = 5.0, 10.0
 )
 
 // Guards: the distance from a border, beyond the uncertainty, within which a
 // test stays open.
 const (
-	phaseGuard     = 3.0  // degrees
+	phaseGuard  = 3.0 // degrees
+	steadyGuard = 1.5 // degrees
+	// bentGuard is small because no other cause is near: with high axial 1x an
+	// overhung rotor's is in phase at the ends, a bent shaft's opposed.
+	bentGuard      = 1.0  // degrees
 	ratioGuard     = 0.04 // of 1x
 	shareGuard     = 0.05
 	neighbourGuard = 0.2
@@ -92,16 +105,16 @@ func (s *signs) line() truth {
 
 // unsteady tells whether the phase moves within the minute or between minutes.
 func (s *signs) unsteady() truth {
-	creep := s.creep.atLeast(mostCreep, phaseGuard)
+	creep := s.creep.atLeast(mostCreep, steadyGuard)
 	if !s.creep.ok {
 		creep = no // the minute itself decides until there is a memory
 	}
-	return either(s.wander.atLeast(mostWander, phaseGuard), creep)
+	t := either(s.wander.atLeast(mostWander, steadyGuard), creep)
+	if !s.referenced {
+		t = min(t, open) // the point that the lags are relative to may be the unsteady one
+	}
+	return t
 }
-
-// inPhaseRadially, opposedRadially tell how the ends move against each other.
-func (s *signs) inPhaseRadially() truth { return s.both.value().atMost(inLine, phaseGuard) }
-func (s *signs) opposedRadially() truth { return s.both.value().atLeast(180-inLine, phaseGuard) }
 
 // axialOut tells whether a high axial 1x is there that an overhung rotor's
 // unbalance does not explain.
@@ -130,7 +143,7 @@ func (s *signs) suspicions() []suspicion {
 	list := []suspicion{
 		{NeighbourMachine, neighbour},
 		{RubOrLooseRotor, all(unsteady, not(h2), not(h3))},
-		{Looseness, either(all(h2, h3), all(unsteady, either(h2, h3)))},
+		{Looseness, either(all(h2, h3), all(unsteady, either(h2, h3)), s.lifting())},
 		{Misalignment, s.misaligned()},
 		{BentShaft, s.bent()},
 		{Resonance, s.resonant()},
@@ -144,17 +157,28 @@ func (s *signs) suspicions() []suspicion {
 	return list
 }
 
-// eccentric: motion on lines at both bearings (common practice) without the
-// axial motion and the 2x of a misaligned coupling.
+// lifting: the harmonics of a support that opens and closes, in one direction.
+// A coupling makes them in one direction too, but then moves the bearings on
+// lines. With a radial point missing the directions cannot be compared fairly.
+func (s *signs) lifting() truth {
+	t := all(s.rough.atLeast(some2x, ratioGuard), s.roughRatio.atLeast(oneSided, ratioGuard*oneSided), not(s.line()))
+	if !s.inPhase.ok {
+		t = min(t, open)
+	}
+	return t
+}
+
+// eccentric: motion on lines (common practice) without the axial motion and the
+// 2x of a misaligned coupling.
 func (s *signs) eccentric() truth {
-	return all(s.straight(driveEnd), s.straight(nonDriveEnd),
-		not(s.axialOut(highAxial)), not(s.second.atLeast(some2x, ratioGuard)))
+	return all(s.line(), not(s.axialOut(highAxial)), not(s.second.atLeast(some2x, ratioGuard)))
 }
 
 // bent: high axial 1x with the ends opposed, radial in phase, all +-30 (S4).
 func (s *signs) bent() truth {
 	return all(s.axial.atLeast(highAxial, ratioGuard),
-		s.axialEnds.value().atLeast(180-inLine, phaseGuard), s.inPhaseRadially())
+		s.axialEnds.value().atLeast(180-inLine, bentGuard),
+		s.both.value().atMost(inLine, bentGuard))
 }
 
 // misaligned: two of straight motion at the bearings (S3), high 2x (common
@@ -174,6 +198,8 @@ func (s *signs) misaligned() truth {
 func (s *signs) resonant() truth {
 	b := s.heavier()
 	large := s.uneven[b].atLeast(lopsided, lopsidedGuard)
+	between := all(s.uneven[b].atLeast(besideResonance, lopsidedGuard), s.offQuarter(b).atLeast(halfTurned, phaseGuard))
 	hint := all(large, s.offQuarter(b).atLeast(turnedOff, 0), open)
-	return either(all(large, not(s.circles(b))), hint, s.uneven[b].atLeast(amplified, 2*lopsidedGuard))
+	return either(all(large, not(s.circles(b))), between, hint,
+		s.uneven[b].atLeast(amplified, 2*lopsidedGuard))
 }
