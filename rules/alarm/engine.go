@@ -1,6 +1,7 @@
 package alarm
 
 import (
+	"math"
 	"slices"
 	"strings"
 	"time"
@@ -56,7 +57,7 @@ func (e *Engine) Minute(m *dsp.Minute, f *rules.Finding) []Event {
 		}
 	}
 	events = append(events, e.forget(watched, m.Start)...)
-	if m.Speed.State == dsp.Steady {
+	if m.Speed.State == dsp.Steady && m.Speed.Mean > 0 && !math.IsInf(m.Speed.Mean, 1) {
 		e.steadyRPM = m.Speed.Mean
 	}
 	return events
