@@ -9,6 +9,7 @@ const (
 	adviceReset  = "look at the MOSI wire, at chip select and at the SPI mode (1); if another program has used the converter, switch its power off and on"
 	adviceSupply = "look at the converter's supply and its SYNC/RESET pin"
 	adviceClock  = "look at the converter's clock: clock_hz, crystal or clock at CLKIN"
+	adviceLoad   = "look at the load of the board and the priority of the process"
 	adviceEdge   = "look at the data-ready wire and its pin, and at the converter's clock (crystal or clock at CLKIN)"
 )
 

@@ -99,7 +99,8 @@ func TestEachAnswerSpoilt(t *testing.T) {
 			}
 			return nil
 		})
-		if !looked {
+		// A few bad samples are put up with while the rate is measured.
+		if !looked || name == "read samples" {
 			if err != nil {
 				t.Errorf("transaction %d, %s: %v", i+1, name, err)
 			}
@@ -145,7 +146,7 @@ func TestWrongAnswers(t *testing.T) {
 		{7, 0x0500, "cannot write CLOCK = 0096h: answer 0500h, expected 4180h; MOSI"},
 		{9, 0xFF0E, "cannot set CLOCK: reads FF0Eh, written 0096h"},
 		{66, 0x0500, "STATUS"},
-		{67, 0x0500, "converter has restarted; supply"},
+		{67, 0x0500, "converter has lost its configuration; supply"},
 	} {
 		err := openSpoilt(t, answerWith(v.n, v.word))
 		if v.n == 66 {
@@ -193,11 +194,7 @@ func TestOpenFails(t *testing.T) {
 		{"wrong clock", func(o *chip.Options, _ *ads131m08.Config) { o.ClockErrorPPM = -20_000 }, nil,
 			[]string{"data-ready comes 980.0 times a second, expected 1000", "clock_hz"}},
 		{"resets again and again", nil, []chip.Fault{{Kind: chip.SelfReset, From: 10 * ms}},
-			[]string{"converter has restarted", "supply"}},
-		{"always late", nil, []chip.Fault{
-			{Kind: chip.HostLate, From: 20 * ms, Periods: 4}, {Kind: chip.HostLate, From: 100 * ms, Periods: 4},
-			{Kind: chip.HostLate, From: 150 * ms, Periods: 4}, {Kind: chip.HostLate, From: 220 * ms, Periods: 4},
-		}, []string{"host late", "load"}},
+			[]string{"converter has lost its configuration", "supply"}},
 		{"bad config", func(_ *chip.Options, c *ads131m08.Config) { c.Channels = 0 }, nil, []string{"channels = 0"}},
 	} {
 		t.Run(v.name, func(t *testing.T) {

@@ -3,6 +3,7 @@ package ads131m08
 import (
 	"errors"
 	"fmt"
+	"math"
 	"time"
 
 	"heavyspot/acquire"
@@ -15,6 +16,8 @@ const (
 	// patience is how long the chip is only listened to. A reset would lose
 	// the place of its conversions in time, and with it the exact gap.
 	patience = 300 * time.Millisecond
+	// placeTries is how many rows finding the place may take.
+	placeTries = 20
 )
 
 // trouble is why a row could not be had.
@@ -76,7 +79,7 @@ func worse(a, b acquire.Cause) bool {
 // set up anew. It returns what is still wrong, nil for nothing.
 func (s *Source) recover(f *trouble, try int) *trouble {
 	if f.cause != acquire.ChipReset {
-		if f = s.findPlace(try > promptTries); f == nil {
+		if f = s.resume(try > promptTries); f == nil {
 			return nil
 		}
 	}
@@ -105,7 +108,7 @@ func (s *Source) closeGap(first int64) {
 			s.gap.Exact = true
 		}
 		s.gap.Lost += lost
-		s.gap.Exact = s.gap.Exact && exact && s.clock.exact(lost)
+		s.gap.Exact = s.gap.Exact && exact
 		if worse(s.outset.cause, s.gap.Cause) {
 			s.gap.Cause = s.outset.cause
 		}
@@ -113,70 +116,87 @@ func (s *Source) closeGap(first int64) {
 	s.noteOver(first, s.gap)
 }
 
-// findPlace empties the output and waits for the next edge, whose row is then
-// the next one. verify has it read every register first.
-func (s *Source) findPlace(verify bool) *trouble {
+// resume goes on with the chip as it is: not reset. verify has it read every
+// register first. When the clock does not hold any more, because of the time
+// that has passed or of a reset, it is measured again, and rows are counted on
+// as well as can be.
+func (s *Source) resume(verify bool) *trouble {
 	if verify {
 		if err := s.verify(); err != nil {
-			if errors.Is(err, errUnset) {
-				return &trouble{acquire.ChipReset, err}
-			}
 			return &trouble{causeOf(err), err}
 		}
 	}
+	gone := int64(s.clock.rows(s.ready.Now())) - s.next
+	if s.clock.exact(gone) && !s.outset.moved {
+		return s.findPlace()
+	}
+	old := s.clock
+	if err := s.start(old.nearestTo); err != nil {
+		s.clock = old
+		return &trouble{causeOf(err), err}
+	}
+	s.outset.moved = true
+	return nil
+}
+
+// findPlace brings host and chip into step. It empties the output, waits for
+// the next row, and reads it and a frame more: when that is empty again, the
+// row read was the only one, hence the latest by the clock. It is thrown away;
+// the next row is the one after it.
+func (s *Source) findPlace() *trouble {
 	period := time.Duration(s.clock.period)
-	for range 6 {
+	for range placeTries {
 		s.pause(period / 10) // away from the moment of a conversion
-		empty, f := s.empty()
-		if f != nil {
+		if _, f := s.drain(8); f != nil {
 			s.pause(period / 2)
 			return f
 		}
-		t, ok, err := s.edgeAfter(empty, 2*period)
-		if err != nil {
+		t, ok, err := s.ready.Wait(2 * period)
+		switch {
+		case err != nil:
 			s.pause(period)
 			return &trouble{acquire.BusFault, fmt.Errorf("cannot wait for data-ready: %w", err)}
+		case !ok:
+			return &trouble{acquire.BusFault, errors.New("no data-ready edge: " + adviceEdge)}
 		}
-		// Only one conversion may have come since the output was seen empty.
-		if ok && t-empty < period*19/20 {
-			row := s.clock.nearest(t)
-			s.next, s.edge, s.edgeAt = row, row, t
-			s.clock.place(row, t)
+		s.pause(period / 5)
+		before := s.ready.Now()
+		rows, f := s.drain(2)
+		if f != nil {
+			return f
+		}
+		row, sure := s.latest(before)
+		if rows == 1 && sure && s.clock.fits(t) {
+			s.next, s.edge = row+1, row
+			s.clock.loosen()
 			return nil
 		}
 	}
-	return &trouble{acquire.Late, errors.New("host too late to find the place in the stream; look at the load and the priority of the process")}
+	return &trouble{acquire.Late, errors.New("cannot find the place in the stream; " + adviceLoad)}
 }
 
-// empty reads until a frame holds no new row and returns the time before that
-// frame.
-func (s *Source) empty() (time.Duration, *trouble) {
-	for range 8 {
-		before := s.ready.Now()
+// latest returns the row complete at before and now. It is not sure of it when
+// the two differ, or one is near the moment of a conversion.
+func (s *Source) latest(before time.Duration) (row int64, sure bool) {
+	const margin = 0.1 // periods
+	a, b := s.clock.rows(before), s.clock.rows(s.ready.Now())
+	whole := math.Floor(a)
+	return int64(whole), a-whole > margin && b-whole < 1-margin
+}
+
+// drain reads at most limit frames, until one holds no new row, and returns
+// how many did.
+func (s *Source) drain(limit int) (int, *trouble) {
+	for rows := range limit {
 		st, f := s.checked()
 		if f != nil {
-			return 0, f
+			return rows, f
 		}
 		if st.Fresh() == 0 {
-			return before, nil
+			return rows, nil
 		}
 	}
-	return 0, &trouble{acquire.Late, errors.New("output does not run empty; look at the SPI clock")}
-}
-
-// edgeAfter waits for an edge later than t.
-func (s *Source) edgeAfter(t, limit time.Duration) (time.Duration, bool, error) {
-	end := t + limit
-	for {
-		left := end - s.ready.Now()
-		if left <= 0 {
-			return 0, false, nil
-		}
-		edge, ok, err := s.ready.Wait(left)
-		if err != nil || ok && edge > t {
-			return edge, ok, err
-		}
-	}
+	return limit, nil
 }
 
 // setUpAnew resets the chip and brings it up. Rows are counted on by time, but
@@ -186,20 +206,21 @@ func (s *Source) setUpAnew() error {
 	old := s.clock
 	err := s.bringUp()
 	if err == nil {
-		err = s.start()
+		err = s.start(old.nearestTo)
 	}
 	if err != nil {
 		s.clock = old
-		return err
 	}
-	row := old.nearest(s.edgeAt)
-	s.clock.row, s.edge, s.next = row, row, row+1
-	return nil
+	return err
 }
 
-// causeOf tells a wrong check sum from a bus that does not work at all.
+// causeOf tells a restarted chip and a wrong check sum from a bus that does
+// not work at all.
 func causeOf(err error) acquire.Cause {
-	if errors.Is(err, ErrCheck) {
+	switch {
+	case errors.Is(err, errUnset):
+		return acquire.ChipReset
+	case errors.Is(err, ErrCheck):
 		return acquire.BadCheck
 	}
 	return acquire.BusFault

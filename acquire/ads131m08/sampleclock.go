@@ -8,7 +8,7 @@ import (
 const (
 	memory    = 4096 // edges over which the clock is averaged
 	inPlace   = 0.2  // largest distance of an edge from its place, periods
-	wander    = 2e-6 // change of the two clocks' ratio to reckon with
+	wander    = 4e-6 // change of the two clocks' ratio to reckon with
 	exactness = 0.25 // largest uncertainty of an exact gap, periods
 )
 
@@ -24,12 +24,6 @@ type sampleClock struct {
 	spread  float64 // mean square distance of edges from their place, ns^2
 }
 
-// newClock starts from n edges with a mean distance of period (ns), of which
-// the last, at mono, belongs to row.
-func newClock(nominal, period float64, n int, row int64, mono time.Duration) sampleClock {
-	return sampleClock{nominal: nominal, period: period, row: row, time: float64(mono), n: float64(n)}
-}
-
 // at returns the time at which a row is complete, ns.
 func (k *sampleClock) at(row int64) float64 {
 	return k.time + float64(row-k.row)*k.period
@@ -41,8 +35,16 @@ func (k *sampleClock) rows(t time.Duration) float64 {
 }
 
 // nearest returns the row whose completion is nearest to t.
-func (k *sampleClock) nearest(t time.Duration) int64 {
-	return int64(math.Round(k.rows(t)))
+func (k *sampleClock) nearest(t time.Duration) int64 { return k.nearestTo(float64(t)) }
+
+// nearestTo is nearest for a time in ns.
+func (k *sampleClock) nearestTo(ns float64) int64 {
+	return k.row + int64(math.Round((ns-k.time)/k.period))
+}
+
+// fits says whether an edge at t is in its place.
+func (k *sampleClock) fits(t time.Duration) bool {
+	return math.Abs(float64(t)-k.at(k.nearest(t))) <= inPlace*k.period
 }
 
 // update learns from the edge of a row and says whether it was in its place.
@@ -63,16 +65,14 @@ func (k *sampleClock) update(row int64, t time.Duration) bool {
 }
 
 // exact says whether rows can be counted over a gap of lost rows without
-// being off by one.
+// being off by one: whether the errors of place and period, three standard
+// deviations of each, and the wander of the clocks stay well within a row.
 func (k *sampleClock) exact(lost int64) bool {
 	sd := math.Sqrt(k.spread)
-	perRow := sd*math.Sqrt(12/(k.n*k.n*k.n)) + wander*k.period
-	return 3*sd+2*perRow*float64(lost) < exactness*k.period
+	place := 3 * sd * 2 / math.Sqrt(k.n)
+	perRow := 3*sd*math.Sqrt(12/(k.n*k.n*k.n)) + wander*k.period
+	return place+perRow*float64(lost) < exactness*k.period
 }
 
-// place puts row at time t after a gap, and learns faster for a while, for
-// the clock may have drifted in the gap.
-func (k *sampleClock) place(row int64, t time.Duration) {
-	k.row, k.time = row, float64(t)
-	k.n = math.Min(k.n, 64)
-}
+// loosen makes the clock learn faster for a while, as it should after a gap.
+func (k *sampleClock) loosen() { k.n = math.Min(k.n, 256) }

@@ -69,7 +69,7 @@ func Open(port spi.Port, ready DataReady, cfg Config) (*Source, error) {
 	if err := s.bringUp(); err != nil {
 		return nil, fmt.Errorf("ads131m08: %w", err)
 	}
-	if err := s.start(); err != nil {
+	if err := s.start(func(float64) int64 { return 0 }); err != nil {
 		return nil, fmt.Errorf("ads131m08: %w", err)
 	}
 	go s.run()

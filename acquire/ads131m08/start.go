@@ -10,108 +10,136 @@ import (
 
 const (
 	unsettled   = 4     // rows to discard after a change (section 8.3.7.1.1)
-	measureRows = 16    // least rows to measure the rate over
+	measureRows = 32    // least edges to measure the rate with
 	measureTime = 0.05  // least seconds of that
 	rateOff     = 0.005 // largest relative error of the clock
-	startTries  = 4
 )
 
-// start empties the output, discards what has not settled and measures the
-// rate. Row 0 is then the next one.
-func (s *Source) start() error {
-	period, mono, n, err := s.measure()
-	if err != nil {
+// start measures the rate and finds the place in the stream; the next row gets
+// the index that number returns for the time of its completion (ns).
+func (s *Source) start(number func(at float64) int64) error {
+	if err := s.measure(); err != nil {
 		return err
 	}
-	s.clock = newClock(s.nominal, period, n, -1, mono)
-	s.edge, s.edgeAt = -1, mono
+	if f := s.findPlace(); f != nil {
+		return fmt.Errorf("cannot find the place in the stream: %w", f.err)
+	}
+	shift := number(s.clock.at(s.next)) - s.next
+	s.next += shift
+	s.edge += shift
+	s.clock.row += shift
 	return nil
 }
 
-// measure reads settled rows, each after its edge, and returns the mean
-// distance of the edges (ns), the time of the last and their number.
-func (s *Source) measure() (period float64, last time.Duration, n int, err error) {
-	want := max(measureRows, int(measureTime*s.cfg.RateHz))
-	for range startTries {
-		first, last, err := s.measureRun(want)
-		if errors.Is(err, errLate) {
+// measure makes a new sample clock from edges alone. It stands a host that is
+// late at times: medians leave out what does not fit.
+func (s *Source) measure() error {
+	n := max(measureRows, int(measureTime*s.cfg.RateHz))
+	times, err := s.edges(n)
+	if err != nil {
+		return err
+	}
+	k := fit(times, s.nominal)
+	if r := k.period/s.nominal - 1; math.Abs(r) > rateOff {
+		return fmt.Errorf("cannot use the converter: data-ready comes %.1f times a second, expected %g: %s",
+			1e9/k.period, s.cfg.RateHz, adviceClock)
+	}
+	s.clock, s.unseen, s.badEdge = k, 0, 0
+	s.edge, s.edgeAt = k.row, times[n-1]
+	return nil
+}
+
+// edges returns the times of n edges. Frames are read meanwhile, because the
+// line falls only when its data are read; a few may fail their check sum.
+func (s *Source) edges(n int) ([]time.Duration, error) {
+	var times []time.Duration
+	bad := 0
+	for i := -unsettled; i < n; i++ {
+		t, err := s.firstEdge()
+		if err != nil {
+			return nil, err
+		}
+		if i >= 0 {
+			times = append(times, t)
+		}
+		err = s.readStart()
+		if errors.Is(err, ErrCheck) && bad < n/4 {
+			bad++
 			continue
 		}
 		if err != nil {
-			return 0, 0, 0, err
+			return nil, err
 		}
-		period = float64(last-first) / float64(want)
-		if r := period/s.nominal - 1; math.Abs(r) > rateOff {
-			return 0, 0, 0, fmt.Errorf("cannot use the converter: data-ready comes %.1f times a second, expected %g: %s",
-				1e9/period, s.cfg.RateHz, adviceClock)
-		}
-		return period, last, want, nil
 	}
-	return 0, 0, 0, fmt.Errorf("cannot measure the rate: host late in each of %d tries; look at the load and the priority of the process", startTries)
+	return times, nil
 }
 
-var errLate = errors.New("host late")
-
-// measureRun returns the times of the first and the last of want+1 edges, one
-// period apart each, after unsettled rows and the two that the output may
-// hold. It returns errLate when rows were missed.
-func (s *Source) measureRun(want int) (first, last time.Duration, err error) {
-	for range 2 {
-		if _, err := s.readStart(); err != nil {
-			return 0, 0, err
+// fit returns the clock that the times of edges show, of which some may be
+// missing and some late. The last edge gets row 0.
+func fit(times []time.Duration, nominal float64) sampleClock {
+	n := len(times)
+	rows := count(times)
+	var slopes []float64
+	for i := range n / 2 {
+		j := i + n - n/2
+		if d := rows[j] - rows[i]; d > 0 {
+			slopes = append(slopes, float64(times[j]-times[i])/d)
 		}
 	}
-	apart := make([]time.Duration, 0, want)
-	for i := -unsettled; i <= want; i++ {
-		t, err := s.firstEdge()
-		if err != nil {
-			return 0, 0, err
-		}
-		fresh, err := s.readStart()
-		if err != nil {
-			return 0, 0, err
-		}
-		if i <= 0 {
-			first = t
-		} else {
-			apart = append(apart, t-last)
-			if !fresh {
-				return 0, 0, errLate
-			}
-		}
-		last = t
+	k := sampleClock{nominal: nominal, period: median(slopes), n: float64(n)}
+	last := times[n-1]
+	places := make([]float64, n)
+	for i, t := range times {
+		places[i] = float64(t-last) - (rows[i]-rows[n-1])*k.period
 	}
-	// Compared with the median and not with the nominal period, lateness can
-	// be told from a clock that is wrong.
-	slices.Sort(apart)
-	if median := apart[want/2]; apart[want-1] > median*3/2 {
-		return 0, 0, errLate
+	off := median(places)
+	k.time = float64(last) + off
+	for i := range places {
+		places[i] = math.Abs(places[i] - off)
 	}
-	return first, last, nil
+	// 1.4826 makes a standard deviation of the median distance where the
+	// distances are normal.
+	sd := 1.4826 * median(places)
+	k.spread = sd * sd
+	return k
 }
 
-// readStart reads a frame and says whether it held a new row.
-func (s *Source) readStart() (bool, error) {
-	st, err := s.frame()
-	if err != nil {
-		return false, fmt.Errorf("cannot read samples: %w", err)
+// count numbers edges by their distances in units of the median distance.
+func count(times []time.Duration) []float64 {
+	apart := make([]float64, len(times)-1)
+	for i := range apart {
+		apart[i] = float64(times[i+1] - times[i])
 	}
-	if !st.Configured() {
-		return false, fmt.Errorf("cannot read samples: STATUS %04Xh: converter has restarted: %s", uint16(st), adviceSupply)
+	unit := median(slices.Clone(apart))
+	rows := make([]float64, len(times))
+	for i, d := range apart {
+		rows[i+1] = rows[i] + math.Round(d/unit)
 	}
-	return uint16(st.Fresh()) == s.cfg.mask(), nil
+	return rows
 }
 
-// frame reads a frame into s.row.
-func (s *Source) frame() (Status, error) {
+// median sorts x and returns its middle value; NaN for none.
+func median(x []float64) float64 {
+	if len(x) == 0 {
+		return math.NaN()
+	}
+	slices.Sort(x)
+	return x[len(x)/2]
+}
+
+// readStart reads a frame and throws its samples away.
+func (s *Source) readStart() error {
 	if err := s.bus.poll(); err != nil {
-		return 0, transferError(err)
+		return fmt.Errorf("cannot read samples: %w", transferError(err))
 	}
 	st, err := s.decoder.Decode(&s.bus.r, s.row[:])
 	if err != nil {
-		return 0, badFrame(err)
+		return fmt.Errorf("cannot read samples: %w", badFrame(err))
 	}
-	return st, nil
+	if !st.Configured() {
+		return fmt.Errorf("cannot read samples: STATUS %04Xh: %w: %s", uint16(st), errUnset, adviceSupply)
+	}
+	return nil
 }
 
 // firstEdge waits for an edge as long as the slowest converter may take.

@@ -10,18 +10,21 @@ import (
 )
 
 const (
-	// lateRows is how many periods after its completion a row is lost for
-	// certain or perhaps: the output holds two rows, so a little less than 2.
-	lateRows = 1.9
+	// lateRows is how many periods after its completion a row is lost, or may
+	// be: the output holds two rows, so 2, less what the time of the edges may
+	// lag behind the conversions.
+	lateRows = 1.75
 	// edgeWait is how long after its time a row is waited for, in periods. An
 	// edge is missing when the conversion came while a frame was read.
-	edgeWait  = 0.5
-	overdue   = 0.25 // from here on a row is read without waiting, periods
+	edgeWait = 0.5
+	// overdue is when a row is read without waiting, in periods after its
+	// time. When there is none by then the count of rows is wrong.
+	overdue   = 0.25
 	earlyRows = -0.3 // a row this long before its time is not the one expected
-	noRows    = 1.5  // without data for so long the chip has stopped, periods
 
 	maxBadEdges = 64  // edges out of place before the clock is doubted
 	maxUnseen   = 0.5 // seconds without an edge before the line is doubted
+	minUnseen   = 50  // rows of that at least
 )
 
 // run samples until Close.
@@ -44,6 +47,7 @@ func (s *Source) sample() *trouble {
 	if err := s.await(); err != nil {
 		return &trouble{acquire.BusFault, fmt.Errorf("cannot wait for data-ready: %w", err)}
 	}
+	before := s.clock.rows(s.ready.Now()) - float64(s.next)
 	st, f := s.checked()
 	if f != nil {
 		return f
@@ -51,9 +55,9 @@ func (s *Source) sample() *trouble {
 	after := s.clock.rows(s.ready.Now()-s.wire) - float64(s.next)
 	switch fresh := uint16(st.Fresh()); {
 	case after >= lateRows:
-		return &trouble{acquire.Late, fmt.Errorf("read %.1f sample periods late; look at the load and the priority of the process", after)}
-	case fresh == 0 && after > noRows:
-		return &trouble{acquire.BusFault, fmt.Errorf("no new samples: %s", adviceClock)}
+		return &trouble{acquire.Late, fmt.Errorf("read %.1f sample periods late; %s", after, adviceLoad)}
+	case fresh == 0 && before > overdue:
+		return &trouble{acquire.Late, fmt.Errorf("a sample is missing; %s", adviceLoad)}
 	case fresh == 0:
 		s.pause(time.Duration(0.1 * s.nominal))
 		return nil
@@ -117,9 +121,9 @@ func (s *Source) noteEdge(t time.Duration) {
 func (s *Source) learn() *trouble {
 	if s.edge != s.next {
 		s.unseen++
-		if float64(s.unseen) > math.Max(50, maxUnseen*s.cfg.RateHz) {
+		if limit := math.Max(minUnseen, maxUnseen*s.cfg.RateHz); float64(s.unseen) > limit {
 			s.unseen = 0
-			return &trouble{acquire.BusFault, fmt.Errorf("no data-ready edge for %d samples: %s", int(math.Max(50, maxUnseen*s.cfg.RateHz)), adviceEdge)}
+			return &trouble{acquire.BusFault, fmt.Errorf("no data-ready edge for %.0f samples: %s", limit, adviceEdge)}
 		}
 		return nil
 	}
