@@ -66,6 +66,15 @@ func start(t *testing.T, c Config) *Machine {
 	return m
 }
 
+// oneGoroutine skips a long simulation under the race detector, which slows it
+// fiftyfold and has nothing to find in a single goroutine.
+func oneGoroutine(t *testing.T) {
+	t.Helper()
+	if raceDetector {
+		t.Skip("one goroutine: nothing to find for the race detector")
+	}
+}
+
 // skip runs a machine for some seconds without looking.
 func skip(m *Machine, seconds float64) {
 	dst := make([]float32, m.Channels())
@@ -75,6 +84,7 @@ func skip(m *Machine, seconds float64) {
 }
 
 func TestLoosenessMakesHarmonics(t *testing.T) {
+	oneGoroutine(t)
 	c := fan()
 	c.Unbalances = []Unbalance{{KgM: 0.1, PositionM: 0.9}}
 	const wholeTurns = 60.0 / 1480 * 100
@@ -98,6 +108,7 @@ func TestLoosenessMakesHarmonics(t *testing.T) {
 }
 
 func TestLooseRotorCreeps(t *testing.T) {
+	oneGoroutine(t)
 	c := fan()
 	c.Faults.LooseRotor = LooseRotor{Unbalance: Unbalance{KgM: 0.1, PositionM: 0.9}, DegPerMinute: 120}
 	m := start(t, c)
@@ -121,6 +132,7 @@ func TestLooseRotorCreeps(t *testing.T) {
 }
 
 func TestHalfOrderKeepsItsPhase(t *testing.T) {
+	oneGoroutine(t)
 	c := fan()
 	c.Faults.LooseRotor.HalfOrderN = 500
 	m := start(t, c)
@@ -142,6 +154,7 @@ func TestHalfOrderKeepsItsPhase(t *testing.T) {
 
 // TestChangesWhileRunning adds a mass, softens the pedestals and takes both back.
 func TestChangesWhileRunning(t *testing.T) {
+	oneGoroutine(t)
 	c := fan()
 	m := start(t, c)
 	check := func(what string) {
@@ -179,6 +192,7 @@ func TestChangesWhileRunning(t *testing.T) {
 // TestFlowIsBroadband: the flow's velocity grows with its force, is no order of the
 // shaft, and is a fraction of a percent at 1x.
 func TestFlowIsBroadband(t *testing.T) {
+	oneGoroutine(t)
 	level := func(force float64) observed {
 		c := fan()
 		c.Faults.Flow.ForceN = force

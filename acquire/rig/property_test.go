@@ -172,6 +172,7 @@ func TestUseFromSeveralGoroutines(t *testing.T) {
 // TestStepsOfAnySize: the same machine gives the same motion at any number of steps
 // per second, more or fewer than those of the integration.
 func TestStepsOfAnySize(t *testing.T) {
+	oneGoroutine(t)
 	for _, hz := range []float64{500, 1000, 3000, 8000, 16000, 32000} {
 		c := fan()
 		c.Unbalances = []Unbalance{{KgM: 0.1, PositionM: 0.8}}

@@ -9,9 +9,9 @@ import (
 // draws is the number of machines of a kind looked at.
 func draws() int {
 	if os.Getenv("HEAVYSPOT_LONG") == "1" {
-		return 1000
+		return 500
 	}
-	return 60
+	return 25
 }
 
 // each draws machines of a kind.
@@ -157,10 +157,11 @@ func TestRandomIsRepeatable(t *testing.T) {
 // TestRandomMachinesRun simulates one machine of each kind and compares its 1x
 // with the truth; the kinds whose steady response is not the whole truth are bounded.
 func TestRandomMachinesRun(t *testing.T) {
+	oneGoroutine(t)
 	for _, k := range Kinds() {
 		c := Random(k, newRand(9))
 		m := start(t, c.Config)
-		for i, o := range observe(m, 6) {
+		for i, o := range observe(m, 4) {
 			want := c.Points[i].Order[0]
 			if math.IsNaN(o.rms) || o.rms > 60 {
 				t.Errorf("%v, %s: %g mm/s", k, c.Points[i].Name, o.rms)

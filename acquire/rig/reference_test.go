@@ -72,6 +72,7 @@ func TestEdgesStandAtWholeTurns(t *testing.T) {
 // TestMachineEdges: the machine's angle and its pulses are one and the same, also
 // after thousands of turns and through the wrap of the angle.
 func TestMachineEdges(t *testing.T) {
+	oneGoroutine(t)
 	c := fan()
 	c.Drive.Slip, c.Drive.LoadWander, c.Drive.WanderS = 0.02, 0.5, 2
 	m := start(t, c)

@@ -115,6 +115,7 @@ func same(t *testing.T, what string, got, want Vector, rel, deg float64) {
 }
 
 func TestTimeDomainEqualsSteadyResponse(t *testing.T) {
+	oneGoroutine(t)
 	c := fan()
 	c.Unbalances = []Unbalance{{KgM: 0.08, PositionM: 0.7, AngleDeg: 40}, {KgM: 0.05, PositionM: 1.3, AngleDeg: 200}}
 	c.Faults.Bow = MidspanBow(40e-6, 2, 100)

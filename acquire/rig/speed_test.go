@@ -8,6 +8,7 @@ import (
 // TestRunDownFollowsItsLaw: dr/dt = -(a r^2 + b) with r the speed over rated has the
 // solution r = sqrt(b/a) tan(atan(sqrt(a/b)) - sqrt(a b) t).
 func TestRunDownFollowsItsLaw(t *testing.T) {
+	oneGoroutine(t)
 	c := fan()
 	c.Drive.WindageRPMPerS, c.Drive.FrictionRPMPerS = 148, 37 // a = 0.1/s, b = 0.025/s
 	m := start(t, c)
@@ -26,6 +27,7 @@ func TestRunDownFollowsItsLaw(t *testing.T) {
 
 // TestStandstill: nothing moves and the pulse stays as it is.
 func TestStandstill(t *testing.T) {
+	oneGoroutine(t)
 	c := fan()
 	c.Unbalances = []Unbalance{{KgM: 0.1, PositionM: 1}}
 	c.Drive.Stopped = true
@@ -62,6 +64,7 @@ func TestStandstill(t *testing.T) {
 // TestRunDownPassesTheResonance: a machine above its critical speed
 // shows a larger 1x on its way down than running.
 func TestRunDownPassesTheResonance(t *testing.T) {
+	oneGoroutine(t)
 	c := fan()
 	for e := range c.Supports {
 		c.Supports[e].V.K, c.Supports[e].H.K = 4e6, 4e6
@@ -93,6 +96,7 @@ func TestRunDownPassesTheResonance(t *testing.T) {
 
 // TestWander: the speed keeps near its mean with the spread that slip and load give.
 func TestWander(t *testing.T) {
+	oneGoroutine(t)
 	c := fan()
 	c.Drive.Slip, c.Drive.LoadWander, c.Drive.WanderS, c.Drive.FollowS = 0.02, 0.2, 1, 0.05
 	m := start(t, c)
