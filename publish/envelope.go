@@ -73,8 +73,8 @@ func Counted(index int64, rateHz float64) time.Time {
 // MarshalJSON writes the time.
 func (t Time) MarshalJSON() ([]byte, error) {
 	u := At(t.Time)
-	if y := u.Year(); y < 0 || y > 9999 {
-		return nil, fmt.Errorf("publish: year %d: must be from 0 to 9999", y)
+	if err := u.check(); err != nil {
+		return nil, err
 	}
 	return u.AppendFormat(nil, `"`+timeLayout+`"`), nil
 }
@@ -90,6 +90,14 @@ func (t *Time) UnmarshalJSON(b []byte) error {
 		return fmt.Errorf("publish: time %q: must be as in 2026-03-01T06:31:00.000Z", s)
 	}
 	*t = At(u)
+	return t.check()
+}
+
+// check refuses years that RFC 3339 cannot write.
+func (t Time) check() error {
+	if y := t.Year(); y < 0 || y > 9999 {
+		return fmt.Errorf("publish: year %d: must be from 0 to 9999", y)
+	}
 	return nil
 }
 

@@ -25,7 +25,7 @@ type Severity struct {
 type Evidence struct {
 	Test string `json:"test"`
 	// Measured, SD and Margin are in Unit; they are left out when the test could
-	// not be made. Margin is the distance to the nearest bound, negative outside.
+	// not be made, SD also when it is not known. Margin is the distance to the nearest bound, negative outside.
 	Measured *float64 `json:"measured,omitempty"`
 	SD       *float64 `json:"sd,omitempty"`
 	Unit     string   `json:"unit"`
@@ -65,7 +65,10 @@ func evidence(e *rules.Evidence) Evidence {
 		out.Missing, out.Holds = "no figure could be computed", false
 		return out
 	}
-	out.Measured, out.SD, out.Margin = measured(e.Measured, 4), measured(e.SD, 4), measured(e.Margin, 4)
+	out.Measured, out.Margin = measured(e.Measured, 4), measured(e.Margin, 4)
+	if e.SD > 0 {
+		out.SD = measured(e.SD, 4)
+	}
 	return out
 }
 

@@ -96,9 +96,9 @@ func consistent(t *testing.T, path string) {
 	}
 }
 
-func file(t *testing.T) string { return filepath.Join(t.TempDir(), "heavyspot.db") }
+func file(t testing.TB) string { return filepath.Join(t.TempDir(), "heavyspot.db") }
 
-func mustStore(t *testing.T, b *Buffer, ticks ...*Tick) {
+func mustStore(t testing.TB, b *Buffer, ticks ...*Tick) {
 	t.Helper()
 	for _, k := range ticks {
 		if err := b.Store(k); err != nil {
