@@ -5,9 +5,11 @@ import (
 	"errors"
 	"fmt"
 	"io"
+	"os"
 	"os/signal"
 	"runtime/debug"
 	"syscall"
+	"time"
 
 	"github.com/alecthomas/kong"
 
@@ -24,6 +26,8 @@ const (
 
 // commands are the program's commands and flags.
 type commands struct {
+	Run    runCommand    `cmd:"" help:"Watch the machine: the daemon."`
+	Demo   demoCommand   `cmd:"" help:"Show the whole program at work on a simulated fan."`
 	Replay replayCommand `cmd:"" help:"Lead a recording through the same steps and print what would be published."`
 
 	Version kong.VersionFlag `help:"Print the version and exit."`
@@ -32,7 +36,17 @@ type commands struct {
 // examples are the examples for the help of a command; "" is the program.
 var examples = map[string][]string{
 	"": {
+		"heavyspot demo                                  see what it does",
+		"heavyspot run -c kiln-fan-2.toml                watch the machine",
 		"heavyspot replay -c kiln-fan-2.toml fan.csv     what a recording shows",
+	},
+	"run": {
+		"heavyspot run -c /etc/heavyspot/kiln-fan-2.toml",
+	},
+	"demo": {
+		"heavyspot demo",
+		"heavyspot demo --speed 2 --seed 7",
+		"heavyspot demo --json > messages.jsonl",
 	},
 	"replay": {
 		"heavyspot replay -c kiln-fan-2.toml fan.csv",
@@ -65,13 +79,10 @@ func (e doubtError) Error() string {
 	return text
 }
 
-// execute runs the program and returns its exit status. The first SIGINT or
-// SIGTERM ends a command cleanly, the second ends the program at once.
+// execute runs the program and returns its exit status.
 func execute(args []string, out, talk io.Writer) int {
-	ctx, stop := signal.NotifyContext(context.Background(), syscall.SIGINT, syscall.SIGTERM)
+	ctx, stop := withSignals()
 	defer stop()
-	context.AfterFunc(ctx, stop)
-
 	if len(args) == 0 {
 		args = []string{"--help"}
 	}
@@ -102,6 +113,38 @@ func execute(args []string, out, talk io.Writer) int {
 		fmt.Fprintf(talk, "heavyspot: %v\n", err)
 	}
 	return statusOf(err)
+}
+
+// sameWish is how close together signals count as one: shells and make send a
+// signal to a process and once more to its group.
+const sameWish = 500 * time.Millisecond
+
+// withSignals returns a context that ends with the first SIGINT or SIGTERM, by
+// which a command ends cleanly. Another one ends the program at once.
+func withSignals() (ctx context.Context, stop func()) {
+	ctx, cancel := context.WithCancel(context.Background())
+	signals := make(chan os.Signal, 4)
+	signal.Notify(signals, syscall.SIGINT, syscall.SIGTERM)
+	done := make(chan struct{})
+	go func() {
+		defer close(done)
+		var first time.Time
+		for range signals {
+			if !first.IsZero() && time.Since(first) > sameWish {
+				os.Exit(statusFailed)
+			}
+			if first.IsZero() {
+				first = time.Now()
+				cancel()
+			}
+		}
+	}()
+	return ctx, func() {
+		signal.Stop(signals)
+		close(signals)
+		<-done
+		cancel()
+	}
 }
 
 // statusOf is the exit status that an error means.

@@ -11,12 +11,13 @@ import (
 	"heavyspot/acquire"
 	"heavyspot/acquire/recording"
 	"heavyspot/config"
+	"heavyspot/rules/alarm"
 )
 
 // replayCommand leads a recording through the pipeline.
 type replayCommand struct {
-	Config     string    `short:"c" required:"" type:"path" placeholder:"FILE" help:"Configuration of the machine."`
-	Recording  string    `arg:"" type:"path" help:"CSV or WAV recording."`
+	Config     string    `short:"c" required:"" placeholder:"FILE" help:"Configuration of the machine."`
+	Recording  string    `arg:"" help:"CSV or WAV recording."`
 	JSON       bool      `name:"json" help:"Print the messages as JSON Lines."`
 	Start      startTime `placeholder:"TIME" help:"Wall time of the first sample, as 2026-03-01T06:31:00Z; without it the time that the file carries, else minutes count from the first sample."`
 	FullScaleV float64   `name:"full-scale-v" placeholder:"V" help:"Volts of a WAV file's full scale."`
@@ -53,7 +54,7 @@ func (c *replayCommand) Run(env *environment) error {
 	if !c.JSON {
 		shown = newTextSink(cfg, out)
 	}
-	alarms, err := newAlarms(cfg)
+	alarms, err := alarm.New(cfg.Alarms())
 	if err != nil {
 		return usageError{err}
 	}
@@ -98,35 +99,43 @@ func (c *replayCommand) verdict(ctx context.Context, err error, cfg *config.Conf
 // openRecording opens a recording that fits the configuration; one that does
 // not is a usage error.
 func openRecording(cfg *config.Config, path string, opt recording.Options) (*recording.Source, error) {
-	opt.ExpectRateHz = cfg.Source.RateHz
-	src, err := recording.Open(path, opt)
-	if err != nil {
-		opt.ExpectRateHz = 0
-		other, again := recording.Open(path, opt)
-		if again != nil {
-			return nil, err
-		}
-		rate := other.Format().RateHz
-		other.Close()
-		return nil, usageError{fmt.Errorf("cannot replay %s: it is sampled at %.6g Hz and source.rate_hz is %.6g, they must agree within 0.1 %%",
-			path, rate, cfg.Source.RateHz)}
+	fitting := opt
+	fitting.ExpectRateHz = cfg.Source.RateHz
+	for _, p := range cfg.Points {
+		fitting.Channels = append(fitting.Channels, p.Channel)
 	}
-	if err := checkChannels(cfg, src, path); err != nil {
-		src.Close()
-		return nil, usageError{err}
+	if r := cfg.Reference; r != nil {
+		fitting.Channels = append(fitting.Channels, r.Channel)
 	}
-	return src, nil
+	src, err := recording.Open(path, fitting)
+	if err == nil {
+		return src, nil
+	}
+	// Open it as it is, to tell a damaged file from one that does not fit.
+	other, again := recording.Open(path, opt)
+	if again != nil {
+		return nil, err
+	}
+	defer other.Close()
+	if hz := other.Format().RateHz; math.Abs(hz-cfg.Source.RateHz) > 1e-3*cfg.Source.RateHz {
+		return nil, usageError{fmt.Errorf("cannot use recording %s: it is sampled at %.6g Hz and source.rate_hz is %.6g; they must agree within 0.1 %%",
+			path, hz, cfg.Source.RateHz)}
+	}
+	if lack := checkChannels(cfg, other, path); lack != nil {
+		return nil, usageError{lack}
+	}
+	return nil, err
 }
 
 // checkChannels says which channel of the configuration a recording lacks.
 func checkChannels(cfg *config.Config, src *recording.Source, path string) error {
 	for _, p := range cfg.Points {
 		if !src.Has(p.Channel) {
-			return fmt.Errorf("cannot replay %s: it has no column ch%d, which the configuration gives to point %s", path, p.Channel, p.Name)
+			return fmt.Errorf("cannot use recording %s: it has no channel %d, which the configuration gives to point %s", path, p.Channel, p.Name)
 		}
 	}
 	if r := cfg.Reference; r != nil && !src.Has(r.Channel) {
-		return fmt.Errorf("cannot replay %s: it has no column ch%d, which the configuration gives to the phase reference", path, r.Channel)
+		return fmt.Errorf("cannot use recording %s: it has no channel %d, which the configuration gives to the phase reference", path, r.Channel)
 	}
 	return nil
 }

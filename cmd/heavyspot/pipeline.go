@@ -87,16 +87,6 @@ func fullScale(cfg *config.Config, dc *dsp.Config) {
 	}
 }
 
-// newAlarms returns the alarm engine of a configuration.
-func newAlarms(cfg *config.Config) (*alarm.Engine, error) {
-	limits := cfg.Rules().Limits
-	return alarm.New(alarm.Config{
-		Machine: cfg.Machine.Name, AlarmMMS: limits.Alarm, TripMMS: limits.Trip,
-		QuietShare: cfg.Limits.QuietShare, HasReference: cfg.Reference != nil,
-		UnbalanceMinutes: cfg.Alarm.UnbalanceMinutes, ClearMinutes: cfg.Alarm.ClearMinutes,
-	})
-}
-
 // run reads the source to its end or until ctx ends, and closes the last
 // minute in either case. It returns nil at the stream's end and when ctx ended.
 func (p *pipeline) run(ctx context.Context, src acquire.Source) error {

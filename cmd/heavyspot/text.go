@@ -161,6 +161,9 @@ func notes(m *dsp.Minute) []string {
 		list = append(list, "no usable phase reference, lags are relative to "+m.LagFrom)
 	}
 	for _, l := range m.Lines {
+		if m.Speed.State != dsp.Steady {
+			break // while the speed changes a line is hardly another machine
+		}
 		list = append(list, fmt.Sprintf("a neighbour turns at %.1f r/min", l.RPM))
 	}
 	return list
@@ -196,15 +199,19 @@ func severityText(s *rules.Severity) string {
 
 // eventText tells of an alarm that changed.
 func eventText(e *alarm.Event) string {
-	word := "  ALARM    "
-	if !e.Condition {
-		word = "  cleared  "
+	word, text := eventWords(e)
+	return wrap(fmt.Sprintf("  %-9s", word), text)
+}
+
+// eventWords is what happened to an alarm, in a word and in a sentence.
+func eventWords(e *alarm.Event) (word, text string) {
+	word = "cleared"
+	if e.Condition {
+		word = "ALARM"
 	}
-	text := fmt.Sprintf("%s, priority %s: ", e.Key(), e.Priority)
+	text = fmt.Sprintf("%s, priority %s: ", e.Key(), e.Priority)
 	if e.Alarm == alarm.High1x || e.Alarm == alarm.HighOverall {
-		text += fmt.Sprintf("%.2f %s, limit %.4g", e.Value, e.Unit, e.Limit)
-	} else {
-		text += e.Text
+		return word, text + fmt.Sprintf("%.2f %s, limit %.4g", e.Value, e.Unit, e.Limit)
 	}
-	return wrap(word, text)
+	return word, text + e.Text
 }
