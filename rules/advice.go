@@ -3,6 +3,7 @@ package rules
 import (
 	"fmt"
 	"math"
+	"slices"
 	"strings"
 )
 
@@ -80,17 +81,21 @@ func undeterminedAdvice(f *Finding, s *signs) string {
 		switch {
 		case e.Test == "phase-creep" && e.Missing != "":
 		case e.Missing != "":
-			absent = append(absent, e.Test)
+			absent = append(absent, strings.Split(e.Missing, ", ")...)
 		case !e.Holds:
 			against = append(against, e.Test)
 		}
 	}
 	parts := []string{"do not balance on this reading"}
 	if len(absent) > 0 {
-		parts = append(parts, "not tested: "+strings.Join(absent, ", "))
+		slices.Sort(absent)
+		parts = append(parts, "not all could be tested: "+strings.Join(slices.Compact(absent), ", "))
+	}
+	if kind, _ := s.kind(); len(absent) > 0 && len(against) == 0 && s.both.ok {
+		parts = append(parts, "what could be tested looks like "+strings.ReplaceAll(string(kind), "-", " "))
 	}
 	if len(against) > 0 {
-		parts = append(parts, "against unbalance: "+strings.Join(against, ", "))
+		parts = append(parts, "out of the range for unbalance: "+strings.Join(against, ", "))
 	}
 	if reversed(s) {
 		parts = append(parts, "the bearings circle against the rotor: check the configured rotation and the sensors' sides, "+

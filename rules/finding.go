@@ -50,7 +50,8 @@ const (
 type Severity struct {
 	// Standard is the table used: "iso-14694", "iso-20816-3" or "own".
 	Standard string
-	Level    Level
+	// Level is empty when no point is good.
+	Level Level
 	// WorstPoint is the name of the point with the highest overall velocity;
 	// empty when no point is good.
 	WorstPoint string

@@ -61,8 +61,11 @@ func bearingOf(p Point) int {
 	return driveEnd
 }
 
-// newPlace takes a reading; one that is not good or not finite leaves an empty
-// place.
+// still is the 1x amplitude, mm/s rms, below which a point stands still and has
+// no phase; absurd is a value that no machine reaches, in any unit used here.
+const still, absurd = 1e-6, 1e6
+
+// newPlace takes a reading; one that cannot be judged leaves an empty place.
 func newPlace(r *dsp.PointReading) place {
 	if !usable(r) {
 		return place{}
@@ -72,19 +75,24 @@ func newPlace(r *dsp.PointReading) place {
 		lagSD: r.Order[0].LagSD, rmsSD: r.Order[0].RMSSD,
 	}
 	for n, v := range r.Order {
-		p.z[n] = cmplx.Rect(v.RMS, -radians(v.Lag))
+		if v.RMS >= still {
+			p.z[n] = cmplx.Rect(v.RMS, -radians(v.Lag))
+		}
 	}
 	return p
 }
 
-// usable says whether a reading can be judged.
+// usable says whether a reading is good and holds numbers that can be judged.
 func usable(r *dsp.PointReading) bool {
-	sum := r.Overall + r.Wander
+	ok := r.State == dsp.PointGood && sound(r.Overall) && sound(r.Wander)
 	for _, v := range r.Order {
-		sum += v.RMS + v.Lag + v.RMSSD + v.LagSD
+		ok = ok && sound(v.RMS) && sound(v.RMSSD) && sound(v.LagSD) && math.Abs(v.Lag) <= absurd
 	}
-	return r.State == dsp.PointGood && !math.IsNaN(sum) && !math.IsInf(sum, 0)
+	return ok
 }
+
+// sound says whether x is a number from 0 to absurd.
+func sound(x float64) bool { return x >= 0 && x <= absurd }
 
 // angle is a phase difference, -180 < deg <= 180, with its standard deviation;
 // ok is false when a point is missing.

@@ -147,12 +147,12 @@ func lostWords(t *rapid.T, s *scene, f Finding) {
 	}
 	radial := good["de-v"] && good["de-h"] && good["nde-v"] && good["nde-h"]
 	switch f.Verdict {
-	case StaticUnbalance, CoupleUnbalance, DynamicUnbalance:
+	case StaticUnbalance, CoupleUnbalance, DynamicUnbalance, OverhungUnbal:
 		if !radial || !good["de-a"] || !good["nde-a"] {
 			t.Fatalf("verdict %s with points %v", f.Verdict, good)
 		}
-	case OverhungUnbal:
-		if !good["de-a"] || !good["nde-a"] {
+	case NotUnbalance:
+		if !radial {
 			t.Fatalf("verdict %s with points %v", f.Verdict, good)
 		}
 	case Undetermined:

@@ -91,35 +91,34 @@ func (s *signs) endsEvidence(kind Verdict, missing *[2][3]string) []Evidence {
 	r := endsRange(kind)
 	v := because(missing[driveEnd][Vertical], missing[nonDriveEnd][Vertical])
 	h := because(missing[driveEnd][Horizontal], missing[nonDriveEnd][Horizontal])
+	radial := because(missing[driveEnd][Vertical], missing[nonDriveEnd][Vertical],
+		missing[driveEnd][Horizontal], missing[nonDriveEnd][Horizontal])
 	alike := span(0, 180)
 	if kind == DynamicUnbalance {
 		alike = span(0, inLine)
 	}
 	return []Evidence{
-		evidence("ends-phase", s.both.value(), "deg", r, "", because(v, h)),
+		evidence("ends-phase", s.both.value(), "deg", r, "", radial),
 		evidence("ends-phase-vertical", s.ends[Vertical].value(), "deg", r, "", v),
 		evidence("ends-phase-horizontal", s.ends[Horizontal].value(), "deg", r, "", h),
-		evidence("ends-phase-disagreement", s.disagreement, "deg", alike, "", because(v, h)),
-		evidence("in-phase-share", s.inPhase, "", span(0, 1), "", because(v, h)),
+		evidence("ends-phase-disagreement", s.disagreement, "deg", alike, "", radial),
+		evidence("in-phase-share", s.inPhase, "", span(0, 1), "", radial),
 	}
 }
 
 // axialEvidence are the tests of the axial 1x.
 func (s *signs) axialEvidence(kind Verdict, missing *[2][3]string) []Evidence {
 	r, phase, purpose := upTo(highAxial), span(0, 180), "while axial is low"
+	raised := s.axial.atLeast(highAxial, ratioGuard) != no
 	switch {
 	case kind == OverhungUnbal:
 		r, phase, purpose = from(overhungAxial), span(0, inLine), ""
 	case kind == CoupleUnbalance:
 		r, purpose = upTo(1), "as a couple may raise axial"
-	case s.axial.atLeast(highAxial, ratioGuard) != no:
-		phase, purpose = span(0, 120), "while axial is high"
-		if s.axialFits(kind) == yes {
-			r = upTo(misalignedAxial)
-		}
-		if kind == DynamicUnbalance && s.axialFits(kind) == yes {
-			phase, purpose = span(0, 180), "while the ends are not in phase radially"
-		}
+	case raised && kind == DynamicUnbalance && s.axialFits(kind) == yes:
+		r, purpose = upTo(misalignedAxial), "as the ends are not those of a bent shaft"
+	case raised:
+		phase, purpose = span(0, farFromOpposed), "while axial is high"
 	}
 	why := because(missing[driveEnd][Axial], missing[nonDriveEnd][Axial])
 	return []Evidence{
@@ -137,7 +136,7 @@ func because(reasons ...string) string {
 		}
 	}
 	if len(list) == 0 {
-		return "no 1x vibration"
+		return "no 1x vibration there"
 	}
 	return strings.Join(list, ", ")
 }

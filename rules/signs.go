@@ -11,8 +11,6 @@ type signs struct {
 	overhung bool
 	// referenced is false when lags are relative to a point.
 	referenced bool
-	// bearings is the number of bearings with a good point.
-	bearings int
 	// quiet is the worst 1x, mm/s rms.
 	worst value
 	// share is the part of the radial points' power that is at 1x.
@@ -33,6 +31,8 @@ type signs struct {
 	uneven, forward, weight [2]value
 	// ends is by how far the bearings are out of phase, 0 to 180 degrees,
 	// vertical, horizontal and over both; disagreement is how far the two differ.
+	// inPhase is the share of the radial power in which they move together; it
+	// is known when all four radial points are.
 	ends         [2]angle
 	both         angle
 	disagreement value
@@ -54,9 +54,6 @@ func measure(cfg *Config, m *dsp.Minute, p *picture, creep value) *signs {
 	s.lines(cfg, m, p)
 	for b := range p.at {
 		s.orbit(p, b)
-		if p.at[b][Vertical].good || p.at[b][Horizontal].good || p.at[b][Axial].good {
-			s.bearings++
-		}
 	}
 	for d := Vertical; d <= Horizontal; d++ {
 		s.ends[d] = p.ends(d).size()
@@ -95,7 +92,7 @@ func (s *signs) orders(p *picture) {
 	if radial == 0 {
 		return
 	}
-	if overall > 0 {
+	if overall > sq(still) {
 		s.share = value{x: radial / overall, ok: true}
 	}
 	s.second, s.third = harmonic(p, 2), harmonic(p, 3)

@@ -159,13 +159,9 @@ func (s *signs) suspicions() []suspicion {
 
 // lifting: the harmonics of a support that opens and closes, in one direction.
 // A coupling makes them in one direction too, but then moves the bearings on
-// lines. With a radial point missing the directions cannot be compared fairly.
+// lines.
 func (s *signs) lifting() truth {
-	t := all(s.rough.atLeast(some2x, ratioGuard), s.roughRatio.atLeast(oneSided, ratioGuard*oneSided), not(s.line()))
-	if !s.inPhase.ok {
-		t = min(t, open)
-	}
-	return t
+	return all(s.rough.atLeast(some2x, ratioGuard), s.roughRatio.atLeast(oneSided, ratioGuard*oneSided), not(s.line()))
 }
 
 // eccentric: motion on lines (common practice) without the axial motion and the

@@ -3,41 +3,33 @@ package rules
 // decide returns the verdict on signs that are not quiet, and the other causes
 // that are sure (of NotUnbalance) or that could not be contradicted.
 func (s *signs) decide() (Verdict, []Suspect) {
-	var sure, possible []Suspect
+	// seen are the possible ones that something speaks for, not only a missing point.
+	var sure, possible, seen []Suspect
 	for _, c := range s.suspicions() {
-		switch s.capped(c) {
-		case yes:
+		switch {
+		case c.t == yes && s.complete():
 			sure = append(sure, c.suspect)
-		case open:
+		case c.t != no:
 			possible = append(possible, c.suspect)
+			if c.suspect != BentShaft || s.axial.ok {
+				seen = append(seen, c.suspect)
+			}
 		}
 	}
 	if len(sure) > 0 {
-		return NotUnbalance, append(sure, possible...)
+		return NotUnbalance, append(sure, seen...)
 	}
 	kind, t := s.kind()
-	if t == yes && len(possible) == 0 {
+	if t == yes && len(possible) == 0 && s.complete() {
 		return kind, nil
 	}
 	return Undetermined, possible
 }
 
-// capped lowers what one bearing alone, or vectors without a reference, cannot
-// make sure.
-func (s *signs) capped(c suspicion) truth {
-	if c.t != yes {
-		return c.t
-	}
-	alone := s.bearings < 2
-	switch c.suspect {
-	case NeighbourMachine, NotTurnRelated:
-		alone = alone && !s.referenced
-	}
-	if alone {
-		return open
-	}
-	return yes
-}
+// complete tells whether both bearings are measured in both radial directions.
+// Short of that nothing is concluded: the bearing that moves most may be the
+// one that is not measured, and the other tells little of the rotor.
+func (s *signs) complete() bool { return s.inPhase.ok }
 
 // kind returns the kind of unbalance that fits best, and how well. Unbalance of
 // any kind has a dominant 1x, little 2x and bearings that circle with the rotor.
@@ -67,10 +59,6 @@ const calm = 0.2
 // line either: S3 finds the pattern broken in 10 to 20 % of plain unbalance on
 // unequal supports and on overhung rotors.
 func (s *signs) turns() truth {
-	de, nde := s.circles(driveEnd), s.circles(nonDriveEnd)
-	if !s.turning[driveEnd].ok || !s.turning[nonDriveEnd].ok {
-		return either(de, nde)
-	}
 	b := s.heavier()
 	broken := all(not(s.straight(1-b)), not(s.circles(1-b)))
 	return all(s.circles(b), either(s.circles(1-b), broken, s.weight[1-b].atMost(calm, 0)))
@@ -104,17 +92,23 @@ func (s *signs) endsKind() (Verdict, truth) {
 }
 
 // axialFits tells whether the axial 1x is low enough for the kind, or is
-// explained: it may be raised by a couple (S1), and it does not mean a bent
-// shaft when the ends' axial or radial phases are not those of one.
+// explained: it may be raised by a couple (S1), alone or as a part of dynamic
+// unbalance, where it does not mean a bent shaft when the ends' axial or radial
+// phases are not those of one.
 func (s *signs) axialFits(kind Verdict) truth {
 	low := not(s.axial.atLeast(highAxial, ratioGuard))
-	medium := not(s.axial.atLeast(misalignedAxial, ratioGuard))
-	notOpposed := s.axialEnds.value().atMost(120, phaseGuard)
 	switch kind {
 	case CoupleUnbalance:
 		return not(s.axial.atLeast(1, ratioGuard))
 	case DynamicUnbalance:
-		return either(low, all(medium, either(notOpposed, s.both.value().atLeast(60, phaseGuard))))
+		medium := not(s.axial.atLeast(misalignedAxial, ratioGuard))
+		notOpposed := s.axialEnds.value().atMost(farFromOpposed, phaseGuard)
+		notInPhase := s.both.value().atLeast(farFromInPhase, phaseGuard)
+		return either(low, all(medium, either(notOpposed, notInPhase)))
 	}
-	return either(low, all(medium, notOpposed))
+	return low
 }
+
+// farFromOpposed and farFromInPhase are phases between the ends, degrees, that
+// are twice inLine away from those of a bent shaft.
+const farFromOpposed, farFromInPhase = 180 - 2*inLine, 2 * inLine
