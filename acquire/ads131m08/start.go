@@ -4,7 +4,6 @@ import (
 	"errors"
 	"fmt"
 	"math"
-	"slices"
 	"time"
 )
 
@@ -72,59 +71,6 @@ func (s *Source) edges(n int) ([]time.Duration, error) {
 		}
 	}
 	return times, nil
-}
-
-// fit returns the clock that the times of edges show, of which some may be
-// missing and some late. The last edge gets row 0.
-func fit(times []time.Duration, nominal float64) sampleClock {
-	n := len(times)
-	rows := count(times)
-	var slopes []float64
-	for i := range n / 2 {
-		j := i + n - n/2
-		if d := rows[j] - rows[i]; d > 0 {
-			slopes = append(slopes, float64(times[j]-times[i])/d)
-		}
-	}
-	k := sampleClock{nominal: nominal, period: median(slopes), n: float64(n)}
-	last := times[n-1]
-	places := make([]float64, n)
-	for i, t := range times {
-		places[i] = float64(t-last) - (rows[i]-rows[n-1])*k.period
-	}
-	off := median(places)
-	k.time = float64(last) + off
-	for i := range places {
-		places[i] = math.Abs(places[i] - off)
-	}
-	// 1.4826 makes a standard deviation of the median distance where the
-	// distances are normal.
-	sd := 1.4826 * median(places)
-	k.spread = sd * sd
-	return k
-}
-
-// count numbers edges by their distances in units of the median distance.
-func count(times []time.Duration) []float64 {
-	apart := make([]float64, len(times)-1)
-	for i := range apart {
-		apart[i] = float64(times[i+1] - times[i])
-	}
-	unit := median(slices.Clone(apart))
-	rows := make([]float64, len(times))
-	for i, d := range apart {
-		rows[i+1] = rows[i] + math.Round(d/unit)
-	}
-	return rows
-}
-
-// median sorts x and returns its middle value; NaN for none.
-func median(x []float64) float64 {
-	if len(x) == 0 {
-		return math.NaN()
-	}
-	slices.Sort(x)
-	return x[len(x)/2]
 }
 
 // readStart reads a frame and throws its samples away.
