@@ -29,6 +29,7 @@ type commands struct {
 	Run    runCommand    `cmd:"" help:"Watch the machine: the daemon."`
 	Demo   demoCommand   `cmd:"" help:"Show the whole program at work on a simulated fan."`
 	Replay replayCommand `cmd:"" help:"Lead a recording through the same steps and print what would be published."`
+	Check  checkCommand  `cmd:"" help:"Check a configuration, what it names, or a recording; say what to mend."`
 
 	Version kong.VersionFlag `help:"Print the version and exit."`
 }
@@ -37,6 +38,7 @@ type commands struct {
 var examples = map[string][]string{
 	"": {
 		"heavyspot demo                                  see what it does",
+		"heavyspot check -c kiln-fan-2.toml              before it runs for the first time",
 		"heavyspot run -c kiln-fan-2.toml                watch the machine",
 		"heavyspot replay -c kiln-fan-2.toml fan.csv     what a recording shows",
 	},
@@ -47,6 +49,10 @@ var examples = map[string][]string{
 		"heavyspot demo",
 		"heavyspot demo --speed 2 --seed 7",
 		"heavyspot demo --json > messages.jsonl",
+	},
+	"check": {
+		"heavyspot check -c kiln-fan-2.toml",
+		"heavyspot check -c kiln-fan-2.toml fan.csv",
 	},
 	"replay": {
 		"heavyspot replay -c kiln-fan-2.toml fan.csv",

@@ -210,7 +210,7 @@ func (d *demo) conclude(env *environment) error {
 	if d.wave.rows > 0 {
 		fmt.Fprintf(&b, "  heavyspot replay -c %s \\\n    %s\n", d.file, d.wave.path)
 	}
-	fmt.Fprintf(&b, "  heavyspot run -c %s\n", d.file)
+	fmt.Fprintf(&b, "  heavyspot check -c %s\n  heavyspot run -c %s\n", d.file, d.file)
 	b.WriteString(d.subscription("  ") + "    shows the messages while run or demo is at work\n")
 	b.WriteString("\n" + wrap("safety   ", safety))
 	_, err := io.WriteString(out, b.String())

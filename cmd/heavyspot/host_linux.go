@@ -28,3 +28,13 @@ func hurry() {
 	const priority = 40
 	unix.SchedSetAttr(0, &unix.SchedAttr{Size: unix.SizeofSchedAttr, Policy: unix.SCHED_FIFO, Priority: priority}, 0)
 }
+
+// freeBytes returns how many bytes an ordinary user may still write in a
+// folder's file system; false when that is not known.
+func freeBytes(folder string) (int64, bool) {
+	var s unix.Statfs_t
+	if err := unix.Statfs(folder, &s); err != nil {
+		return 0, false
+	}
+	return int64(s.Bavail) * int64(s.Bsize), true
+}

@@ -38,6 +38,7 @@ type sink interface {
 // code runs live, from a recording and in the demo.
 type pipeline struct {
 	engine  *dsp.Engine
+	rules   rules.Config
 	judge   *rules.Judge
 	alarms  *alarm.Engine
 	minutes minutes
@@ -62,14 +63,17 @@ func newPipeline(cfg *config.Config, f acquire.Format, alarms *alarm.Engine, sin
 	if err != nil {
 		return nil, err
 	}
-	j, err := rules.NewJudge(cfg.Rules())
-	if err != nil {
-		return nil, err
-	}
-	return &pipeline{
-		engine: e, judge: j, alarms: alarms, format: f, sinks: sinks, cut: true,
+	p := &pipeline{
+		engine: e, rules: cfg.Rules(), alarms: alarms, format: f, sinks: sinks, cut: true,
 		minutes: minutes{rateHz: f.RateHz},
-	}, nil
+	}
+	return p, p.newJudge()
+}
+
+// newJudge begins to judge without memory of earlier minutes.
+func (p *pipeline) newJudge() (err error) {
+	p.judge, err = rules.NewJudge(p.rules)
+	return err
 }
 
 // fullScale sets the voltage at which the converter of a configuration
@@ -164,10 +168,13 @@ func (p *pipeline) bridge(row int64) error {
 	if err := p.close(); err != nil {
 		return err
 	}
-	if m.skip(row) {
-		p.engine.Close(m.start, time.Time{}, false)
+	if !m.skip(row) {
+		return nil
 	}
-	return nil
+	p.engine.Close(m.start, time.Time{}, false)
+	// The judge compares phases from one minute to the next; over a hole of
+	// minutes, let alone days, a difference is no creep.
+	return p.newJudge()
 }
 
 // close ends the running minute at its boundary.

@@ -60,9 +60,12 @@ func openConverter(cfg *config.Config, dc ads131m08.Config) (acquire.Source, err
 	if _, err := host.Init(); err != nil {
 		return nil, fmt.Errorf("cannot learn what board this is: %w", err)
 	}
+	if len(spireg.All()) == 0 {
+		return nil, errors.New("cannot open the SPI port (source.spi): this computer has none; switch SPI on in the board's set-up, which makes /dev/spidev*")
+	}
 	port, err := spireg.Open(cfg.Source.SPI)
 	if err != nil {
-		return nil, fmt.Errorf("cannot open the SPI port %s (source.spi): %w; is SPI switched on in the board's set-up, and may this user open /dev/spidev*?", cfg.Source.SPI, err)
+		return nil, fmt.Errorf("cannot open the SPI port %s (source.spi): %w; is it the right one, and may this user open /dev/spidev*?", cfg.Source.SPI, err)
 	}
 	src, halt, err := onPort(cfg, dc, port)
 	if err != nil {

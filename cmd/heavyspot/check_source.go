@@ -1,0 +1,124 @@
+package main
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"io"
+	"time"
+
+	"heavyspot/acquire"
+	"heavyspot/acquire/recording"
+	"heavyspot/config"
+	"heavyspot/dsp"
+)
+
+// lookSeconds is how long a source is sampled for a look at its signals, s: at
+// least a few turns of a slow machine, and longer where the turn rate must be
+// found from the vibration.
+const lookSeconds, lookLonger = 6, 15
+
+// source opens the source and looks at its signals for a few seconds.
+func (l *checkList) source(ctx context.Context, cfg *config.Config, held bool) {
+	driver := cfg.Source.Driver
+	if held && driver != config.DriverRig {
+		l.step(isNote, "source", "not tried, because heavyspot runs and the converter is in its hands; stop it to check the source")
+		return
+	}
+	src, err := openSource(cfg, nil)
+	if err != nil {
+		l.step(toMend, "source", "%v", err)
+		return
+	}
+	defer src.Close()
+	seconds := lookSeconds
+	if cfg.Reference == nil {
+		seconds = lookLonger
+	}
+	l.look(ctx, cfg, src, driver, float64(seconds))
+}
+
+// recording looks at the first minute of a recording.
+func (l *checkList) recording(ctx context.Context, cfg *config.Config, src *recording.Source, path string) {
+	defer src.Close()
+	l.look(ctx, cfg, src, path, 60)
+}
+
+// look reads a stream for some seconds and says what its signals are like.
+func (l *checkList) look(ctx context.Context, cfg *config.Config, src acquire.Source, name string, seconds float64) {
+	f := src.Format()
+	dc := cfg.DSP(f.RateHz, f.Channels)
+	dc.Gain = f.Response
+	fullScale(cfg, &dc)
+	engine, err := dsp.NewEngine(dc)
+	if err != nil {
+		l.step(toMend, "source", "%v", err)
+		return
+	}
+	began := time.Now()
+	var first, end, lost int64
+	var b acquire.Block
+	for end-first < int64(seconds*f.RateHz) {
+		if err = src.Read(ctx, &b); err != nil {
+			break
+		}
+		if end == 0 {
+			first = b.First
+		}
+		lost += b.Gap.Lost
+		engine.Push(b.First, b.Volts)
+		end = b.First + int64(b.Rows(f.Channels))
+	}
+	switch {
+	case end == first:
+		l.step(toMend, "source", "%s: no samples: %v", name, err)
+		return
+	case err != nil && !errors.Is(err, io.EOF) && ctx.Err() == nil:
+		l.step(dataWrong, "source", "%s: after %.1f s: %v", name, float64(end-first)/f.RateHz, err)
+	}
+	text := fmt.Sprintf("%s: %d channels at %g Hz, looked at for %.1f s", name, f.Channels, f.RateHz, float64(end-first)/f.RateHz)
+	if _, file := src.(*recording.Source); !file {
+		text += fmt.Sprintf(" (%.1f s by this computer's clock)", time.Since(began).Seconds())
+	}
+	if lost > 0 {
+		l.step(dataWrong, "source", "%s; %s missing", text, several(int(lost), "sample row"))
+	} else {
+		l.step(isOK, "source", "%s, no sample missing", text)
+	}
+	m := engine.Close(end, time.Time{}, false)
+	l.speed(cfg, &m)
+	for i := range m.Points {
+		l.signal(&m, &m.Points[i])
+	}
+}
+
+// speed says what the phase reference shows.
+func (l *checkList) speed(cfg *config.Config, m *dsp.Minute) {
+	s := &m.Speed
+	switch {
+	case s.State == dsp.Stopped:
+		l.step(isNote, "speed", "the machine stands, or turns too slowly to be seen; look at the reference again when it runs")
+	case s.Reference == dsp.ReferenceGood:
+		l.step(isOK, "speed", "%.1f r/min by the phase reference, %d whole turns, every pulse in its place", s.Mean, s.Turns)
+	case s.Reference == dsp.ReferenceDoubtful:
+		l.step(dataWrong, "speed", "%.1f r/min by the phase reference, but %d pulses were missing and %d too many; look at the pick-up's distance, and at threshold and hysteresis", s.Mean, s.Missing, s.Extra)
+	case cfg.Reference != nil:
+		l.step(dataWrong, "speed", "%.1f r/min by the vibration, since the phase reference gives no usable pulses; look at its channel, threshold and wiring", s.Mean)
+	default:
+		l.step(isOK, "speed", "%.1f r/min by the vibration", s.Mean)
+	}
+}
+
+// signal says what one point shows.
+func (l *checkList) signal(m *dsp.Minute, p *dsp.PointReading) {
+	switch {
+	case p.State == dsp.PointFlat && m.Speed.State == dsp.Stopped:
+		l.step(isNote, p.Name, "flat, which a sensor on a standing machine may be")
+	case p.State != dsp.PointGood:
+		l.step(dataWrong, p.Name, "signal is %s; look at the sensor, its supply and cable, and at channel and gain", p.State)
+	case m.Speed.State == dsp.Stopped:
+		l.step(isOK, p.Name, "good, overall %.2f mm/s rms", p.Overall)
+	default:
+		l.step(isOK, p.Name, "good, overall %.2f mm/s rms, 1x %.2f @%.0f", p.Overall, p.Order[0].RMS, wholeLag(p.Order[0].Lag))
+	}
+}
