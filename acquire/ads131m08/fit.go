@@ -21,7 +21,7 @@ func fit(times []time.Duration, nominal float64) sampleClock {
 	slices.Sort(apart)
 	period, at := comb(t, apart[len(apart)/2])
 	k := sampleClock{nominal: nominal, period: period, time: at, n: 1}
-	for range 2 {
+	for range 3 {
 		k.straighten(t)
 	}
 	k.row, k.time = 0, k.time+float64(last)

@@ -223,6 +223,20 @@ func testBus(t *testing.T, fault chip.Fault, long time.Duration) {
 	}
 }
 
+// TestCommandsSpoilt: the chip tells of commands that come with a wrong check
+// sum; the samples are not touched by that.
+func TestCommandsSpoilt(t *testing.T) {
+	for _, level := range []byte{0, 0xFF} {
+		_, s := setUp(t, 0.2, nil, chip.Fault{Kind: chip.StuckOutput, From: 500 * ms, To: 1500 * ms, Level: level})
+		if gaps := follow(t, s, 3000, 0.2, 0); len(gaps) != 0 {
+			t.Errorf("gaps %+v", gaps)
+		}
+		if n := s.Faults().InputChecks; n < 990 || n > 1010 {
+			t.Errorf("%d bad commands told, want about 1000", n)
+		}
+	}
+}
+
 // TestCableAndPower: the chip loses its supply together with the cable. When
 // that takes long it has been sent a reset, and why it restarted is unknown.
 func TestCableAndPower(t *testing.T) {

@@ -9,17 +9,8 @@ import (
 	"pgregory.net/rapid"
 )
 
-// edgesOf returns n edges of the given period (ns), each late by lag.
-func edgesOf(n int, period float64, lag func(i int) float64) []time.Duration {
-	t := make([]time.Duration, n)
-	for i := range t {
-		t[i] = time.Duration(1e9 + float64(i)*period + lag(i)*period)
-	}
-	return t
-}
-
-// TestFit: period and place of edges of which a fifth are late by up to three
-// periods, as when their times are those of a process that wakes up.
+// TestFit: period and place of edges of which one in fifteen wakes the process
+// up to three periods late. Those that come meanwhile are told as one.
 func TestFit(t *testing.T) {
 	rapid.Check(t, func(t *rapid.T) {
 		seed := rapid.Uint64().Draw(t, "seed")
@@ -27,23 +18,22 @@ func TestFit(t *testing.T) {
 		ppm := rapid.Float64Range(-3000, 3000).Draw(t, "ppm")
 		rnd := rand.New(rand.NewPCG(seed, 0))
 		period := 1e9 / rate * (1 + ppm*1e-6)
-		n := max(measureRows, int(measureTime*rate))
-		wake := 0.0
-		times := edgesOf(n, period, func(i int) float64 {
+		n := (&Config{RateHz: rate}).measureEdges()
+		var times []time.Duration
+		for row := 0.0; len(times) < n; row++ {
 			late := rnd.ExpFloat64() * 0.02
 			if rnd.IntN(15) == 0 {
 				late += 3 * rnd.Float64()
 			}
-			// A late process holds up what comes after it.
-			wake = math.Max(float64(i)+late, wake)
-			return wake - float64(i)
-		})
+			times = append(times, time.Duration(1e9+(row+late)*period))
+			row += math.Floor(late)
+		}
 		k := fit(times, 1e9/rate)
-		if d := k.period/period - 1; math.Abs(d) > 0.15/float64(n) {
+		if d := k.period/period - 1; math.Abs(d) > 0.1/float64(n) {
 			t.Fatalf("period off by %.3g of it over %d edges", d, n)
 		}
 		place := (k.time - 1e9) / period
-		if d := place - math.Round(place); d < -0.05 || d > 0.15 {
+		if d := place - math.Round(place); d < -0.05 || d > 0.1 {
 			t.Fatalf("place off by %.3f periods", d)
 		}
 	})

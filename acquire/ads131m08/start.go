@@ -8,9 +8,10 @@ import (
 )
 
 const (
-	unsettled   = 4     // rows to discard after a change (section 8.3.7.1.1)
-	measureRows = 32    // least edges to measure the rate with
-	measureTime = 0.05  // least seconds of that
+	unsettled   = 4   // rows to discard after a change (section 8.3.7.1.1)
+	measureTime = 0.1 // seconds to measure the rate over, within
+	leastEdges  = 64  // these numbers of edges
+	mostEdges   = 200
 	rateOff     = 0.005 // largest relative error of the clock
 )
 
@@ -33,7 +34,7 @@ func (s *Source) start(number func(at float64) int64) error {
 // measure makes a new sample clock from edges alone. It stands a host that is
 // late at times: medians leave out what does not fit.
 func (s *Source) measure() error {
-	n := max(measureRows, int(measureTime*s.cfg.RateHz))
+	n := s.cfg.measureEdges()
 	times, err := s.edges(n)
 	if err != nil {
 		return err
@@ -46,6 +47,11 @@ func (s *Source) measure() error {
 	s.clock, s.unseen, s.badEdge = k, 0, 0
 	s.edge, s.edgeAt = k.row, times[n-1]
 	return nil
+}
+
+// measureEdges is how many edges the rate is measured with.
+func (c *Config) measureEdges() int {
+	return min(max(leastEdges, int(measureTime*c.RateHz)), mostEdges)
 }
 
 // edges returns the times of n edges. Frames are read meanwhile, because the

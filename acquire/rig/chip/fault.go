@@ -21,6 +21,9 @@ const (
 	// StuckInput holds the host's input at Level in [From, To); the chip
 	// still sees and obeys what is sent.
 	StuckInput
+	// StuckOutput holds the host's output at Level in [From, To): the chip
+	// sees frames of that level and answers them.
+	StuckOutput
 	// CablePulled holds the host's input at Level in [From, To); the chip
 	// sees nothing and no edge of data-ready reaches the host.
 	CablePulled
@@ -37,7 +40,7 @@ type Fault struct {
 	Periods float64
 	// Probability is that of a corrupted frame, 0 to 1.
 	Probability float64
-	// Level is what each byte of a stuck input reads, 00h or FFh.
+	// Level is what each byte on a stuck line reads, 00h or FFh.
 	Level byte
 	// Err is what a failing transaction returns.
 	Err error

@@ -146,6 +146,9 @@ func (c *Chip) transact(p []spi.Packet, f physic.Frequency) error {
 		fill(r, e.Level)
 		c.advance(began + took)
 	} else {
+		if e := c.active(StuckOutput, began); e != nil {
+			fill(w, e.Level)
+		}
 		c.exchange(w, r, took)
 		c.disturb(r, began)
 	}

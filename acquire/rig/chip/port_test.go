@@ -132,6 +132,14 @@ func TestFaultsOnTheBus(t *testing.T) {
 	}
 	h.let(at(50) - h.c.Now())
 	h.frame(0)
+	h.c.Inject(Fault{Kind: StuckOutput, From: at(60), To: at(70), Level: 0xFF})
+	h.let(at(60) - h.c.Now())
+	h.frame(cmdUnlock)
+	h.let(at(70) - h.c.Now())
+	h.frame(0)
+	if !h.c.locked {
+		t.Error("a command came through a stuck output")
+	}
 }
 
 func TestSpeed(t *testing.T) {
