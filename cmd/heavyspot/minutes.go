@@ -53,13 +53,13 @@ func (m *minutes) observe(first int64, at time.Time, set bool) {
 		m.row, m.at = first, at
 	case !m.set:
 		m.row, m.at, m.set = first, at, true
-		m.realign(first)
+		m.realign()
 	default:
 		off := at.Sub(m.timeOf(first))
 		m.row, m.at = first, at
 		m.end = m.rowOf(m.next)
 		if off.Abs() >= clockStep && !m.fits() {
-			m.realign(first)
+			m.realign()
 		}
 	}
 	m.end = max(m.end, m.reached)
@@ -91,11 +91,11 @@ func (m *minutes) fits() bool {
 	return n >= m.samples(shortest) && n <= m.samples(longest) && m.end >= m.reached
 }
 
-// realign plans the end of the running minute at a UTC minute after the row
-// first, whose time was just told, and dates its start by the same clock.
-func (m *minutes) realign(first int64) {
+// realign plans the end of the running minute at a UTC minute after what has
+// arrived, by the time told last, and dates its start by the same clock.
+func (m *minutes) realign() {
 	m.label = m.timeOf(m.start)
-	m.next = following(m.timeOf(first))
+	m.next = following(m.timeOf(m.reached))
 	m.end = m.rowOf(m.next)
 	for m.end-m.start < m.samples(shortest) {
 		m.next = m.next.Add(time.Minute)
