@@ -117,6 +117,10 @@ func TestLooseRotorCreeps(t *testing.T) {
 		t.Fatal(err)
 	}
 	skip(m, 15)
+	// A change of something else must not set the loose part back.
+	if err := m.Update(func(f *Faults) { f.Flow.CornerHz = 80 }); err != nil {
+		t.Fatal(err)
+	}
 	later, err := m.Steady(c.Drive.RPM)
 	if err != nil {
 		t.Fatal(err)
