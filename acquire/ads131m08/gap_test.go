@@ -195,7 +195,7 @@ func testBus(t *testing.T, fault chip.Fault, long time.Duration) {
 		cfg.OnFault = func(f ads131m08.Fault) { told = append(told, f) }
 	}
 	_, s := setUp(t, 0.2, note, fault)
-	gaps := follow(t, s, 3500, 0.2, 1.5)
+	gaps := follow(t, s, 1000+int64(3*long/2/ms), 0.2, 1.5)
 	s.Close()
 	name := fmt.Sprintf("kind %d level %02x for %v at %v", fault.Kind, fault.Level, long, fault.From)
 	if len(gaps) == 0 && long < 2*ms {

@@ -8,7 +8,7 @@ import (
 )
 
 const (
-	paceGrain = 2 * time.Millisecond   // how far virtual time may run ahead
+	paceGrain = 10 * time.Millisecond  // how far virtual time may run ahead
 	paceLag   = 250 * time.Millisecond // how far behind before it is let go
 	paceSlice = 20 * time.Millisecond  // longest sleep, so that a new speed acts soon
 )
