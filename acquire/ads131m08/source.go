@@ -52,7 +52,8 @@ var _ acquire.Source = (*Source)(nil)
 
 // Open connects to the converter on port, sets it up, measures its rate and
 // starts sampling. port is connected once, in mode 1; ready is its data-ready
-// line. Whatever fails here is an error that says what to look at; ready and
+// line. Whatever fails here is an error that says what to look at. To try
+// again, open the port anew: a port takes one Connect in its life. ready and
 // port stay the caller's to close, after Close.
 func Open(port spi.Port, ready DataReady, cfg Config) (*Source, error) {
 	if err := cfg.Validate(); err != nil {
