@@ -57,6 +57,7 @@ func (l *checkList) look(ctx context.Context, cfg *config.Config, src acquire.So
 	}
 	began := time.Now()
 	var first, end, lost int64
+	width := pulseWidth{reference: dc.Reference}
 	var b acquire.Block
 	for end-first < int64(seconds*f.RateHz) {
 		if err = src.Read(ctx, &b); err != nil {
@@ -67,6 +68,7 @@ func (l *checkList) look(ctx context.Context, cfg *config.Config, src acquire.So
 		}
 		lost += b.Gap.Lost
 		engine.Push(b.First, b.Volts)
+		width.count(b.Volts, f.Channels)
 		end = b.First + int64(b.Rows(f.Channels))
 	}
 	switch {
@@ -87,9 +89,41 @@ func (l *checkList) look(ctx context.Context, cfg *config.Config, src acquire.So
 	}
 	m := engine.Close(end, time.Time{}, false)
 	l.speed(cfg, &m)
+	if w := width.samples(&m); w > 0 && w < leastWidth {
+		l.step(isNote, "reference", "the pulse is %.1f samples wide, which shifts the lags by some degrees; from %d on it does not: use a longer mark or a higher source.rate_hz", w, leastWidth)
+	}
 	for i := range m.Points {
 		l.signal(&m, &m.Points[i])
 	}
+}
+
+// leastWidth is the width of the pulse, in samples, from which the converter's
+// filter, which is three samples long, lets its edge stand where it is.
+const leastWidth = 3
+
+// pulseWidth counts the samples past the threshold of the phase reference.
+type pulseWidth struct {
+	reference *dsp.Reference
+	past      int
+}
+
+func (w *pulseWidth) count(volts []float32, channels int) {
+	if w.reference == nil {
+		return
+	}
+	for i := w.reference.Channel; i < len(volts); i += channels {
+		if above := float64(volts[i]) > w.reference.ThresholdV; above != w.reference.Falling {
+			w.past++
+		}
+	}
+}
+
+// samples returns the mean width of a pulse, 0 when it is not known.
+func (w *pulseWidth) samples(m *dsp.Minute) float64 {
+	if w.reference == nil || m.Speed.State != dsp.Steady || m.Speed.Reference == dsp.ReferenceNone {
+		return 0
+	}
+	return float64(w.past) / (m.Speed.Mean / 60 * m.Seconds)
 }
 
 // speed says what the phase reference shows.

@@ -37,10 +37,10 @@ type commands struct {
 // examples are the examples for the help of a command; "" is the program.
 var examples = map[string][]string{
 	"": {
-		"heavyspot demo                                  see what it does",
-		"heavyspot check -c kiln-fan-2.toml              before it runs for the first time",
-		"heavyspot run -c kiln-fan-2.toml                watch the machine",
-		"heavyspot replay -c kiln-fan-2.toml fan.csv     what a recording shows",
+		"heavyspot demo                                see what it does",
+		"heavyspot check -c kiln-fan-2.toml            before the first run",
+		"heavyspot run -c kiln-fan-2.toml              watch the machine",
+		"heavyspot replay -c kiln-fan-2.toml fan.csv   what a recording shows",
 	},
 	"run": {
 		"heavyspot run -c /etc/heavyspot/kiln-fan-2.toml",

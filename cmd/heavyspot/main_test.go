@@ -48,7 +48,7 @@ func plainOutput(t *testing.T, text string) {
 	}
 }
 
-// fanConfig is a configuration with four radial points and a reference.
+// fanConfig is a configuration with six points and a reference.
 const fanConfig = `
 [machine]
 site = "north-works"
@@ -64,7 +64,7 @@ trip_mm_s_rms = 9.0
 driver = "ads131m08"
 rate_hz = 500
 [reference]
-channel = 4
+channel = 6
 edge = "rising"
 threshold_v = 0.5
 hysteresis_v = 0.1
@@ -81,16 +81,28 @@ direction = "horizontal"
 channel = 1
 volts_per_g = 0.1
 [[point]]
+name = "de-a"
+bearing = "drive-end"
+direction = "axial"
+channel = 2
+volts_per_g = 0.1
+[[point]]
 name = "nde-v"
 bearing = "non-drive-end"
 direction = "vertical"
-channel = 2
+channel = 3
 volts_per_g = 0.1
 [[point]]
 name = "nde-h"
 bearing = "non-drive-end"
 direction = "horizontal"
-channel = 3
+channel = 4
+volts_per_g = 0.1
+[[point]]
+name = "nde-a"
+bearing = "non-drive-end"
+direction = "axial"
+channel = 5
 volts_per_g = 0.1
 `
 
@@ -108,7 +120,10 @@ func writeFile(t *testing.T, name, text string) string {
 // worst point shows mms.
 func scale(mms float64) [][3]rig.Vector {
 	var orders [][3]rig.Vector
-	for _, v := range []rig.Vector{{RMS: 0.7, Lag: 40}, {RMS: 0.9, Lag: 130}, {RMS: 0.8, Lag: 44}, {RMS: 1, Lag: 135}} {
+	for _, v := range []rig.Vector{
+		{RMS: 0.7, Lag: 40}, {RMS: 0.9, Lag: 130}, {RMS: 0.1, Lag: 20},
+		{RMS: 0.8, Lag: 44}, {RMS: 1, Lag: 135}, {RMS: 0.08, Lag: 60},
+	} {
 		v.RMS *= mms
 		orders = append(orders, [3]rig.Vector{v, {RMS: 0.03 * mms, Lag: 200}, {RMS: 0.01 * mms, Lag: 90}})
 	}
@@ -119,11 +134,11 @@ func scale(mms float64) [][3]rig.Vector {
 func phasors(t testing.TB, mms float64, seed uint64, s rig.Sampling) *rig.Source {
 	t.Helper()
 	pc := rig.PhasorConfig{
-		Law: rig.SpeedLaw{RPM: 1500, AngleDeg: 10}, Orders: scale(mms), Channels: 5, StepHz: 2000,
-		Reference: &rig.Reference{Channel: 4, HighV: 1},
+		Law: rig.SpeedLaw{RPM: 1500, AngleDeg: 10}, Orders: scale(mms), Channels: 7, StepHz: 2000,
+		Reference: &rig.Reference{Channel: 6, HighV: 1, WidthDeg: 120},
 	}
-	for i, name := range []string{"de-v", "de-h", "nde-v", "nde-h"} {
-		pc.Sensors = append(pc.Sensors, rig.Sensor{Name: name, End: rig.End(i / 2), Direction: rig.Direction(i % 2), Channel: i, VoltsPerG: 0.1, NoiseV: 2e-6})
+	for i, name := range []string{"de-v", "de-h", "de-a", "nde-v", "nde-h", "nde-a"} {
+		pc.Sensors = append(pc.Sensors, rig.Sensor{Name: name, End: rig.End(i / 3), Direction: rig.Direction(i % 3), Channel: i, VoltsPerG: 0.1, NoiseV: 2e-6})
 	}
 	p, err := rig.NewPhasors(pc, seed)
 	if err != nil {

@@ -60,7 +60,7 @@ func pickup(r *config.Reference) *rig.Reference {
 	// Well past the levels, but within the converter's range.
 	reach := max(0.3, 2*r.HysteresisV)
 	return &rig.Reference{
-		Channel: r.Channel, WidthDeg: 12, Falling: r.Edge == "falling",
+		Channel: r.Channel, WidthDeg: 40, Falling: r.Edge == "falling",
 		LowV: math.Max(r.ThresholdV-reach, -1.15), HighV: math.Min(r.ThresholdV+reach, 1.15),
 		JitterDeg: 0.01, NoiseV: 1e-5,
 	}
