@@ -3,6 +3,7 @@ package buffer
 import (
 	"errors"
 	"fmt"
+	"math/rand/v2"
 	"os"
 	"path/filepath"
 	"testing"
@@ -25,9 +26,10 @@ func minute(n int) *publish.Minute {
 		Speed: dsp.Speed{State: dsp.Steady, Mean: 988.4, Min: 987, Max: 989, Turns: 988, Reference: dsp.ReferenceGood},
 	}
 	for i, p := range []string{"de-v", "de-h", "de-a", "nde-v", "nde-h", "nde-a"} {
-		r := dsp.PointReading{Name: p, State: dsp.PointGood, Overall: 3.6 + float64(n%7)/10, Share: 0.9}
+		rng := rand.New(rand.NewPCG(uint64(n), uint64(i)))
+		r := dsp.PointReading{Name: p, State: dsp.PointGood, Overall: 3 + rng.Float64(), Share: 0.9 - rng.Float64()/10, Wander: rng.Float64()}
 		for o := range r.Order {
-			r.Order[o] = dsp.Vector{RMS: 3 / float64(o+1), Lag: float64(40*i + n%40), RMSSD: 0.02, LagSD: 0.4}
+			r.Order[o] = dsp.Vector{RMS: (3 + rng.Float64()) / float64(o+1), Lag: float64(40*i) + rng.Float64(), RMSSD: rng.Float64() / 50, LagSD: rng.Float64()}
 		}
 		m.Points = append(m.Points, r)
 	}
@@ -36,8 +38,9 @@ func minute(n int) *publish.Minute {
 
 func finding(n int) *publish.Finding {
 	f := rules.Finding{Start: start.Add(time.Duration(n) * time.Minute), Verdict: rules.StaticUnbalance, Advice: "balance"}
+	rng := rand.New(rand.NewPCG(uint64(n), 7))
 	for i := range 6 {
-		f.Evidence = append(f.Evidence, rules.Evidence{Test: fmt.Sprintf("test-%d", i), Measured: 96, Unit: "deg", Expected: "30 to 150", Holds: true, Margin: 54})
+		f.Evidence = append(f.Evidence, rules.Evidence{Test: fmt.Sprintf("test-%d", i), Measured: rng.Float64() * 180, SD: rng.Float64(), Unit: "deg", Expected: "30 to 150", Holds: true, Margin: rng.Float64() * 60})
 	}
 	return publish.FindingMessage(&f)
 }

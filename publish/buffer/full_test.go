@@ -1,6 +1,7 @@
 package buffer
 
 import (
+	"fmt"
 	"testing"
 	"time"
 
@@ -38,10 +39,14 @@ func TestFullFile(t *testing.T) {
 	path := file(t)
 	const size = 2 << 20
 	b := opened(t, path, Options{MaxSize: size})
-	const ticks = 550 // half as many again as fit
+	const ticks = 2400 // half as many again as fit
 	mustStore(t, b, &Tick{Messages: []publish.Message{alarmMessage(0, "de-h", alarm.Unacknowledged)}})
-	for i := range ticks {
-		mustStore(t, b, tick(i))
+	for i := 0; i < ticks; i += 6 {
+		k := &Tick{}
+		for j := range 6 {
+			k.Messages = append(k.Messages, tick(i+j).Messages...)
+		}
+		mustStore(t, b, k)
 	}
 	info, used, err := b.Usage()
 	if err != nil || info > size || used > size {
@@ -78,12 +83,18 @@ func TestCommitAtTheLimit(t *testing.T) {
 		mustStore(t, b, tick(i))
 	}
 	filler := make([]byte, 3000)
-	for i := uint64(0); ; i++ {
-		err := b.db.Update(func(tx *bbolt.Tx) error { return tx.Bucket(bucketState).Put(key(i), filler) })
+	for i, n := uint64(0), 16; n > 0; i++ {
+		err := b.db.Update(func(tx *bbolt.Tx) error {
+			for j := range n {
+				if err := tx.Bucket(bucketState).Put(fmt.Appendf(nil, "%d-%d", i, j), filler); err != nil {
+					return err
+				}
+			}
+			return nil
+		})
 		if full(err) {
-			break
-		}
-		if err != nil {
+			n /= 4
+		} else if err != nil {
 			t.Fatal(err)
 		}
 	}

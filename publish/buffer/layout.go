@@ -17,7 +17,7 @@ const layoutVersion = 1
 var (
 	bucketMeta     = []byte("meta")
 	bucketOutbox   = []byte("outbox")   // sequence -> kind letter
-	bucketStanding = []byte("standing") // alarm topic -> sequence and record of its newest message
+	bucketStanding = []byte("standing") // alarm topic -> record of its newest message
 	bucketState    = []byte("state")    // state of the alarm engine
 )
 

@@ -25,6 +25,7 @@ type Buffer struct {
 	// writing serialises the writers, so that the counts below belong to the
 	// last commit.
 	writing  sync.Mutex
+	packer   *packer
 	sequence atomic.Uint64
 	waiting  atomic.Int64 // messages in the outbox
 	damaged  atomic.Int64 // records found damaged
@@ -97,6 +98,10 @@ func open(path string, opt Options, from count) (*Buffer, error) {
 		}
 	}
 	b := &Buffer{opt: opt, changed: make(chan struct{}, 1)}
+	if b.packer, err = newPacker(); err != nil {
+		f.Close()
+		return nil, err
+	}
 	if err := guard(func() error { return b.start(path, f, from, size) }); err != nil {
 		if damaging(err) {
 			// f must stay locked until the file is set aside, and closing the

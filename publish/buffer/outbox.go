@@ -43,7 +43,7 @@ func fetch(tx *bbolt.Tx, s *shelf, k []byte) (Record, error) {
 	if s == nil {
 		return Record{}, errRecord
 	}
-	return decode(s.kind, k, tx.Bucket(s.records).Get(k))
+	return decode(s.kind, number(k), tx.Bucket(s.records).Get(k))
 }
 
 // Ack takes messages out of the outbox, in one commit. Numbers that are not in
@@ -99,11 +99,11 @@ func (b *Buffer) Standing() ([]Record, error) {
 			}
 			s := shelfOf(publish.KindFinding)
 			if k, v := tx.Bucket(s.records).Cursor().Last(); k != nil {
-				add(decode(s.kind, k, v))
+				add(decode(s.kind, number(k), v))
 			}
 			return tx.Bucket(bucketStanding).ForEach(func(_, v []byte) error {
-				if len(v) > 8 {
-					add(decode(publish.KindAlarm, v[:8], v[8:]))
+				if len(v) >= recordHead {
+					add(decode(publish.KindAlarm, number(v[atSequence:]), v))
 				}
 				return nil
 			})

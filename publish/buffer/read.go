@@ -71,7 +71,7 @@ func (b *Buffer) page(tx *bbolt.Tx, s *shelf, at, end uint64, from, to int64) ([
 			return got, end
 		}
 		if ms, _, err := peek(v); err != nil || ms >= from && ms <= to {
-			if r, err := decode(s.kind, k, v); err == nil {
+			if r, err := decode(s.kind, number(k), v); err == nil {
 				got = append(got, r)
 			} else {
 				b.damaged.Add(1)
@@ -125,7 +125,7 @@ func (b *Buffer) back(tx *bbolt.Tx, s *shelf, before uint64, n int) ([]Record, u
 	for ; k != nil && n > 0; k, v = c.Prev() {
 		n--
 		before = number(k)
-		if r, err := decode(s.kind, k, v); err == nil {
+		if r, err := decode(s.kind, number(k), v); err == nil {
 			got = append(got, r)
 		} else {
 			b.damaged.Add(1)

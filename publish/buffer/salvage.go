@@ -3,7 +3,6 @@ package buffer
 import (
 	"bytes"
 	"io"
-	"strconv"
 )
 
 // count is where the numbers of a new file go on from.
@@ -14,15 +13,11 @@ type count struct{ sequence, boot uint64 }
 // twice, since receivers drop repeats. They see the gap.
 const skipped = 10_000
 
-// most bounds the numbers believed from a damaged file: half of what a JSON
-// reader with 53-bit numbers can hold.
-const most = 1 << 52
-
 // salvage searches the bytes of a damaged file for the highest numbers in any
-// message's envelope. It returns zeros when there are none.
+// record that is whole. It returns zeros when there is none.
 func salvage(r io.ReaderAt) count {
 	var c count
-	const piece, overlap = 1 << 20, 128
+	const piece, overlap = 1 << 20, 1 << 16
 	buf := make([]byte, piece+overlap)
 	for at := int64(0); ; at += piece {
 		n, err := r.ReadAt(buf, at)
@@ -38,34 +33,15 @@ func salvage(r io.ReaderAt) count {
 }
 
 func (c *count) scan(b []byte) {
-	const first, second = `"sequence":`, `,"boot":`
 	for {
-		i := bytes.Index(b, []byte(first))
+		i := bytes.Index(b, []byte(recordMark))
 		if i < 0 {
 			return
 		}
-		b = b[i+len(first):]
-		sequence, rest := digits(b)
-		if !bytes.HasPrefix(rest, []byte(second)) {
-			continue
+		b = b[i:]
+		if r, ok := whole(b); ok {
+			c.sequence, c.boot = max(c.sequence, number(r[atSequence:])), max(c.boot, number(r[atBoot:]))
 		}
-		boot, rest := digits(rest[len(second):])
-		if len(rest) == 0 || rest[0] != ',' || sequence > most || boot > most {
-			continue
-		}
-		c.sequence, c.boot = max(c.sequence, sequence), max(c.boot, boot)
+		b = b[len(recordMark):]
 	}
-}
-
-// digits reads the number at the start of b; it is over most when there is none.
-func digits(b []byte) (uint64, []byte) {
-	n := 0
-	for n < len(b) && b[n] >= '0' && b[n] <= '9' {
-		n++
-	}
-	v, err := strconv.ParseUint(string(b[:n]), 10, 64)
-	if err != nil {
-		v = most + 1
-	}
-	return v, b[n:]
 }

@@ -136,8 +136,11 @@ func (b *Buffer) put(tx *bbolt.Tx, m publish.Message, sequence uint64, set bool)
 	if err != nil {
 		return err
 	}
-	r := Record{Time: head.Time.Time, ClockSet: set, Retained: m.Retained(), Levels: m.Levels(), JSON: body}
-	value := r.encode()
+	r := Record{
+		Sequence: sequence, Boot: head.Boot, Time: head.Time.Time, ClockSet: set,
+		Retained: m.Retained(), Levels: m.Levels(), JSON: body,
+	}
+	value := r.encode(b.packer)
 	if err := s.index(tx, sequence, r.Time.UnixMilli()); err != nil {
 		return err
 	}
@@ -151,5 +154,5 @@ func (b *Buffer) put(tx *bbolt.Tx, m publish.Message, sequence uint64, set bool)
 		return nil
 	}
 	topic := strings.Join(r.Levels, "/")
-	return tx.Bucket(bucketStanding).Put([]byte(topic), append(key(sequence), value...))
+	return tx.Bucket(bucketStanding).Put([]byte(topic), value)
 }
