@@ -16,8 +16,9 @@ func (d *draw) instruments() {
 			BiasV:  span{-0.05, 0.05}.even(r), DriftV: 1e-3, ClipV: 1.2,
 		})
 	}
+	width := max(pulseWidths.byRatio(r), leastPulse*d.omega*180/math.Pi)
 	d.c.Reference = &Reference{
-		Channel: 6, PickupDeg: 360 * r.Float64(), WidthDeg: span{4, 30}.byRatio(r), Falling: r.Float64() < 0.3,
+		Channel: 6, PickupDeg: 360 * r.Float64(), WidthDeg: width, Falling: r.Float64() < 0.3,
 		LowV: span{0, 0.1}.even(r), HighV: span{0.8, 1.1}.even(r), JitterDeg: span{0.005, 0.05}.byRatio(r), NoiseV: 1e-5,
 	}
 }
@@ -67,7 +68,7 @@ func (d *draw) buildBetween() {
 	case d.kind == Loose:
 		// Lifting lowers the natural frequency; it must not fall to the speed.
 		ratio = span{1.8, 3.2}.byRatio(r)
-	case d.kind != Resonant && r.Float64() < g.softShare.lo:
+	case d.kind != Resonant && r.Float64() < g.softShare:
 		ratio = g.soft.byRatio(r)
 	}
 	tilt := g.tilt

@@ -25,21 +25,25 @@ var (
 	tipSpeeds = span{70, 130}
 	// massAt1000 is the rotor's mass at 1000 r/min, kg; it falls with speed^1.2.
 	massAt1000 = span{500, 3000}
-	// Clearance that the running speed keeps from every natural frequency.
+	// pulseWidths are widths of the reference's pulse, degrees; it lasts at least
+	// leastPulse, s, so that a converter at 1 kHz sees its full height.
+	pulseWidths = span{15, 75}
+	leastPulse  = 3.5e-3
+	// clearance is what the running speed keeps from every natural frequency, as a share of it.
 	clearance = 0.22
 )
 
 // betweenRanges describe a rotor between its bearings, on two pedestals.
 var betweenRanges = struct {
-	spanRadii, centre, housing, stiff, soft, softShare, anisotropy, axial, floating, tilt, pedestal span
-	frameShare                                                                                      float64
+	spanRadii, centre, housing, stiff, soft, anisotropy, axial, floating, tilt, pedestal span
+	softShare                                                                            float64
 }{
 	spanRadii:  span{1.8, 3.2},   // span over impeller radius
 	centre:     span{0.42, 0.58}, // centre of mass over span
 	housing:    span{0.03, 0.08}, // housing mass over rotor mass
 	stiff:      span{1.35, 3.2},  // vertical natural frequency over speed, rigid support
 	soft:       span{0.3, 0.72},  // the same on springs or a tall steel frame
-	softShare:  span{0.2, 0.2},   // share of machines on soft supports
+	softShare:  0.2,              // share of machines on soft supports
 	anisotropy: span{0.55, 0.95}, // horizontal over vertical stiffness
 	axial:      span{0.6, 1.4},   // axial over vertical stiffness of a pedestal
 	floating:   span{0.05, 0.35}, // axial stiffness of the floating over the fixed bearing

@@ -1,6 +1,7 @@
 package rig
 
 import (
+	"errors"
 	"fmt"
 	"math"
 	"math/cmplx"
@@ -116,10 +117,12 @@ func respond(m *matrices, f phasor, w, omega float64) (phasor, error) {
 		b.SetVec(dofs+i, imag(f[i]))
 	}
 	var x mat.VecDense
-	if err := x.SolveVec(a, b); err != nil {
-		if _, poor := err.(mat.Condition); !poor || math.IsInf(float64(err.(mat.Condition)), 1) {
-			return phasor{}, fmt.Errorf("rig: no steady response at %.4g rad/s: %v", w, err)
-		}
+	err := x.SolveVec(a, b)
+	// Metres beside radians condition the system badly; only a singular one is
+	// without an answer.
+	var condition mat.Condition
+	if err != nil && !(errors.As(err, &condition) && !math.IsInf(float64(condition), 1)) {
+		return phasor{}, fmt.Errorf("rig: no steady response at %.4g rad/s: %v", w, err)
 	}
 	var q phasor
 	for i := range q {
