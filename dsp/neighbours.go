@@ -38,6 +38,9 @@ const (
 	// pattern of the machine's own vector: two unrelated patterns over six
 	// points reach it once in 4,000.
 	alike = 0.9
+	// imageShare bounds the mirror image of a line: (f-f1)/2f per whole part of
+	// one turn, less for more turns.
+	imageShare = 0.03
 	// farBins is the distance from which a slow change of the machine's own
 	// vector is out of the question, and spreadOut the share of the power around
 	// a line that a single frequency may leave.
@@ -83,7 +86,7 @@ func (nb *neighbours) find(s *series, use []bool, hz float64) []aLine {
 		return nil
 	}
 	var lines []aLine
-	var own []float64
+	var own []stretch
 	for len(lines) < mostLine && len(own) < mostOwn {
 		offset, ok := nb.peak(s, use, hz, lines, own)
 		if !ok {
@@ -95,11 +98,15 @@ func (nb *neighbours) find(s *series, use []bool, hz float64) []aLine {
 				nb.refine(s, use, hz, trial, i)
 			}
 		}
-		if nb.isOwn(s, use, hz, trial) {
-			own = append(own, offset)
-			continue
+		switch bin := 1 / (slots * nb.step(s)); {
+		case isImage(s, use, hz, trial):
+			// The image sweeps when the machine's speed does.
+			own = append(own, stretch{offset, 8 * bin})
+		case nb.isOwn(s, use, hz, trial):
+			own = append(own, stretch{offset, 2 * bin})
+		default:
+			lines = trial
 		}
-		lines = trial
 	}
 	return lines
 }
@@ -137,6 +144,31 @@ func (nb *neighbours) isOwn(s *series, use []bool, hz float64, lines []aLine) bo
 	before := nb.around(at, s)
 	nb.look(s, use, hz, lines)
 	return nb.around(at, s) > spreadOut*before
+}
+
+// isImage reports whether the last of the lines is only the mirror image that
+// another leaves on the other side of 1x, because a part is not an infinite
+// average: it is at most a few hundredths of the line.
+func isImage(s *series, use []bool, hz float64, lines []aLine) bool {
+	last := len(lines) - 1
+	fit := newCombined(s, lines, hz, nil)
+	for j := range last {
+		if math.Abs(lines[j].offset+lines[last].offset) > 2/s.duration() {
+			continue
+		}
+		var image, line float64
+		for p := range s.velocity {
+			if use[p] {
+				fit.solve(s.velocity[p][0])
+				image += sqAbs(fit.vector[1+last])
+				line += sqAbs(fit.vector[1+j])
+			}
+		}
+		if image < imageShare*imageShare*line {
+			return true
+		}
+	}
+	return false
 }
 
 // around returns the power of the spectrum over its noise within a few bins.
@@ -183,8 +215,8 @@ func (nb *neighbours) look(s *series, use []bool, hz float64, lines []aLine) {
 }
 
 // peak returns the offset of the highest line that stands out of the noise,
-// other than those that were found to be the machine's own.
-func (nb *neighbours) peak(s *series, use []bool, hz float64, lines []aLine, not []float64) (offset float64, ok bool) {
+// other than where only the machine's own vector is.
+func (nb *neighbours) peak(s *series, use []bool, hz float64, lines []aLine, not []stretch) (offset float64, ok bool) {
 	nb.look(s, use, hz, lines)
 	bin := 1 / (slots * nb.step(s))                 // Hz
 	best := nb.points + 6*math.Sqrt(nb.points) + 10 // under 1e-4 false alarms a minute
@@ -193,16 +225,19 @@ func (nb *neighbours) peak(s *series, use []bool, hz float64, lines []aLine, not
 		if m > slots/2 {
 			at -= slots * bin
 		}
-		if v > best && math.Abs(at) > ownBins/s.duration() && !near(at, not, 2*bin) {
+		if v > best && math.Abs(at) > ownBins/s.duration() && !near(at, not) {
 			best, offset, ok = v, at, true
 		}
 	}
 	return offset, ok
 }
 
-func near(x float64, places []float64, within float64) bool {
+// stretch is a piece of the spectrum, Hz from 1x.
+type stretch struct{ at, within float64 }
+
+func near(x float64, places []stretch) bool {
 	for _, p := range places {
-		if math.Abs(x-p) <= within {
+		if math.Abs(x-p.at) <= p.within {
 			return true
 		}
 	}

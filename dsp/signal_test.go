@@ -22,6 +22,9 @@ type signal struct {
 	noise         float64 // volts, one standard deviation
 	neighbour     float64 // amplitude against 1x
 	away          float64 // share of the turn rate
+	strays        float64 // wander of the neighbour's speed, share
+	creep         float64 // how far the own lag wanders within the minute, degrees
+	swells        float64 // how much the own amplitude swells and shrinks, share
 	width         float64 // of the pulse, turns
 	falling       bool
 	jitter        float64 // of the pulse, rows
@@ -71,17 +74,19 @@ func (s *signal) render() []float32 {
 	for i := range n {
 		t := (float64(i) + 0.5) / s.rate
 		theta, hz := 2*math.Pi*s.angle(t), s.turnRate(t)
+		creep := s.creep * math.Pi / 180 * (math.Sin(2*math.Pi*t/23) + 0.6*math.Sin(2*math.Pi*t/9+1)) / 1.2
+		swell := 1 + s.swells*math.Sin(2*math.Pi*t/11)
 		x := 0.0
 		for o := range dsp.Orders {
 			w := 2 * math.Pi * hz * float64(o+1)
 			// Acceleration leads velocity by 90 degrees.
-			x += math.Sqrt2 * s.mms[o] * w / gravityMM * sensitivity * -math.Sin(float64(o+1)*theta-s.lag[o]*math.Pi/180)
+			x += math.Sqrt2 * s.mms[o] * w / gravityMM * sensitivity * -math.Sin(float64(o+1)*theta-s.lag[o]*math.Pi/180-creep) * swell
 		}
 		beside := s.neighbour * math.Sqrt2 * s.mms[0] * 2 * math.Pi * s.hz / gravityMM * sensitivity
 		for p := range s.points {
 			y := x + s.noise*r.NormFloat64()
 			if beside != 0 {
-				y += beside * math.Cos(2*math.Pi*s.hz*(1+s.away)*t+nphase[p])
+				y += beside * math.Cos(2*math.Pi*s.hz*((1+s.away)*t+s.strays*5*math.Sin(t/5))+nphase[p])
 			}
 			out[i*stride+p] = float32(y)
 		}
