@@ -69,13 +69,22 @@ func Random(k Kind, r *rand.Rand) Case {
 	if k >= kinds {
 		panic(fmt.Sprintf("rig: there is no %v", k))
 	}
+	c, err := drawUntil(k, nil, r)
+	if err != nil {
+		panic(err)
+	}
+	return c
+}
+
+// drawUntil draws until a machine is what its kind demands.
+func drawUntil(k Kind, w *Wish, r *rand.Rand) (Case, error) {
 	for range maxDraws {
-		d := newDraw(k, r)
+		d := newDraw(k, w, r)
 		if d.build() {
 			return d.finish()
 		}
 	}
-	panic(fmt.Sprintf("rig: no machine with %v in %d draws", k, maxDraws))
+	return Case{}, fmt.Errorf("rig: no machine with %v in %d draws", k, maxDraws)
 }
 
 // draw is a machine in the making.
@@ -88,11 +97,13 @@ type draw struct {
 	overhung            bool
 	// severity is the worst radial 1x to be reached, mm/s rms.
 	severity float64
+	// wish is what is not left to chance, nil for nothing.
+	wish *Wish
 }
 
 // newDraw draws a machine without loads.
-func newDraw(k Kind, r *rand.Rand) *draw {
-	d := &draw{kind: k, r: r, severity: severities.byRatio(r)}
+func newDraw(k Kind, w *Wish, r *rand.Rand) *draw {
+	d := &draw{kind: k, r: r, wish: w, severity: severities.byRatio(r)}
 	switch k {
 	case Quiet:
 		d.severity = quiets.byRatio(r)
@@ -100,6 +111,9 @@ func newDraw(k Kind, r *rand.Rand) *draw {
 		d.severity = faultRanges.neighbourOwn.byRatio(r)
 	}
 	d.c.Drive = Drive{RPM: speeds.byRatio(r), Slip: span{0.004, 0.02}.even(r), LoadWander: span{0.02, 0.1}.even(r), WanderS: span{5, 60}.byRatio(r)}
+	if w != nil {
+		d.obeyLevels()
+	}
 	d.omega = d.c.Drive.RPM * rpm
 	d.radius = tipSpeeds.even(r) / d.omega
 	d.instruments()
@@ -107,7 +121,10 @@ func newDraw(k Kind, r *rand.Rand) *draw {
 	case OverhungRotor:
 		d.overhung = true
 	case Quiet, Loose, RubOrLooseRotor, NeighbourMachine, Eccentric:
-		d.overhung = r.Float64() < 0.3
+		d.overhung = r.Float64() < overhungShare
+	}
+	if w != nil {
+		d.overhung, d.c.Rotor.CounterClockwise = w.Overhung, w.CounterClockwise
 	}
 	if d.overhung {
 		d.buildOverhung()
@@ -127,10 +144,12 @@ func (d *draw) build() bool {
 }
 
 // finish hands over the machine.
-func (d *draw) finish() Case {
-	points, err := d.c.Steady(d.c.Drive.RPM)
-	if err != nil {
-		panic(err) // the same solution was found while drawing
+func (d *draw) finish() (Case, error) {
+	if d.wish != nil && d.wish.NoiseMMS > 0 {
+		if err := setFlow(&d.c, d.wish.NoiseMMS); err != nil {
+			return Case{}, err
+		}
 	}
-	return Case{Kind: d.kind, Config: d.c, Overhung: d.overhung, Points: points}
+	points, err := d.c.Steady(d.c.Drive.RPM)
+	return Case{Kind: d.kind, Config: d.c, Overhung: d.overhung, Points: points}, err
 }

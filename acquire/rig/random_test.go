@@ -93,7 +93,7 @@ func TestBentShaftAxialOpposed(t *testing.T) {
 	r := newRand(1)
 	n, opposed := 0, 0
 	for n < draws() {
-		d := newDraw(BentShaft, r)
+		d := newDraw(BentShaft, nil, r)
 		list, err := d.c.NaturalRPM(d.c.Drive.RPM)
 		if err != nil {
 			t.Fatal(err)

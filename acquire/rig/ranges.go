@@ -21,6 +21,8 @@ var (
 	// severe. quiets are those of a healthy machine.
 	severities = span{2.2, 15}
 	quiets     = span{0.2, 0.9}
+	// overhungShare is the share of overhung rotors where the kind leaves it open.
+	overhungShare = 0.3
 	// tipSpeeds of the impeller, m/s, give its radius.
 	tipSpeeds = span{70, 130}
 	// massAt1000 is the rotor's mass at 1000 r/min, kg; it falls with speed^1.2.
