@@ -42,15 +42,15 @@ func (s *service) ready(log *slog.Logger) {
 		close(s.done)
 		return
 	}
-	go s.live(period / 2)
+	go s.live(period/2, s.blocks.Load())
 }
 
-// live gives a sign of life each period in which a block has passed.
-func (s *service) live(period time.Duration) {
+// live gives a sign of life each period in which a block has passed; last is how
+// many had when it was started.
+func (s *service) live(period time.Duration, last int64) {
 	defer close(s.done)
 	tick := time.NewTicker(period)
 	defer tick.Stop()
-	last := s.blocks.Load()
 	for {
 		select {
 		case <-s.quit:
