@@ -45,7 +45,7 @@ func plant(cfg *config.Config) (*rig.Config, error) {
 	m.PositionM, m.DirectionDeg = -0.3, 35
 	m.RadialN, m.AxialN = [3]float64{0, 20, 25}, [3]float64{15, 0, 0}
 	m.LagDeg = [3]float64{40, 210, 95}
-	noise(c, 0.25)
+	c.Faults.Flow = rig.Flow{ForceN: 80, CornerHz: 100}
 	return c, instrument(c, cfg)
 }
 

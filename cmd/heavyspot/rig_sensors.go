@@ -48,19 +48,24 @@ func instrument(c *rig.Config, cfg *config.Config) error {
 			}
 		}
 	}
-	c.Reference = pickup(cfg.Reference)
+	place := 0.0
+	if c.Reference != nil {
+		place = c.Reference.PickupDeg
+	}
+	c.Reference = pickup(cfg.Reference, place)
 	return nil
 }
 
-// pickup returns a phase reference whose pulses cross the configured levels.
-func pickup(r *config.Reference) *rig.Reference {
+// pickup returns a phase reference at a place, degrees, whose pulses cross the
+// configured levels.
+func pickup(r *config.Reference, place float64) *rig.Reference {
 	if r == nil {
 		return nil
 	}
 	// Well past the levels, but within the converter's range.
 	reach := max(0.3, 2*r.HysteresisV)
 	return &rig.Reference{
-		Channel: r.Channel, WidthDeg: 40, Falling: r.Edge == "falling",
+		Channel: r.Channel, PickupDeg: place, WidthDeg: 40, Falling: r.Edge == "falling",
 		LowV: math.Max(r.ThresholdV-reach, -1.15), HighV: math.Min(r.ThresholdV+reach, 1.15),
 		JitterDeg: 0.01, NoiseV: 1e-5,
 	}
