@@ -43,7 +43,7 @@ func (s *signs) roughRange() bound {
 	if s.roughRatio.atLeast(oneSided, ratioGuard*oneSided) == no {
 		return upTo(2 * most2x)
 	}
-	return upTo(some2x)
+	return upTo(liftingRough)
 }
 
 func (s *signs) noCreep() string {

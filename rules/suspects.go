@@ -26,10 +26,10 @@ const (
 	// other signs (S4: 2x is 30 to 200 % of 1x with a bent shaft).
 	most2x, some2x, some3x, double2x = 0.5, 0.3, 0.3, 1.0
 	// oneSided is the amplitude of the harmonics in one radial direction against
-	// the other's, from which, at some2x of 1x or more, a support that lifts is
-	// suspected (common practice: a support that opens and closes is stiff one
-	// way and soft the other, and makes harmonics in that direction).
-	oneSided = 3.0
+	// the other's, from which, at liftingRough of 1x or more, a support that
+	// lifts is suspected (common practice: a support that opens and closes is
+	// stiff one way and soft the other, and makes harmonics in that direction).
+	oneSided, liftingRough = 3.0, 0.25
 	// highAxial is the axial 1x against the radial one from which it needs a
 	// cause (common practice; S5 gives 0.5 for misalignment, S4 only "high").
 	highAxial, misalignedAxial = 0.3, 0.5
@@ -161,7 +161,7 @@ func (s *signs) suspicions() []suspicion {
 // A coupling makes them in one direction too, but then moves the bearings on
 // lines.
 func (s *signs) lifting() truth {
-	return all(s.rough.atLeast(some2x, ratioGuard), s.roughRatio.atLeast(oneSided, ratioGuard*oneSided), not(s.line()))
+	return all(s.rough.atLeast(liftingRough, shareGuard), s.roughRatio.atLeast(oneSided, ratioGuard*oneSided), not(s.line()))
 }
 
 // eccentric: motion on lines (common practice) without the axial motion and the
