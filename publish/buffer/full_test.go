@@ -72,6 +72,12 @@ func TestFullFile(t *testing.T) {
 		t.Error("the alarm has left the outbox")
 	}
 	t.Logf("%d minutes in %d bytes, %d used", len(minutes), info, used)
+	runs := 0
+	if err := b.view(func(tx *bbolt.Tx) error {
+		return tx.Bucket(shelves[0].runs).ForEach(func(_, _ []byte) error { runs++; return nil })
+	}); err != nil || runs > 2*len(minutes)/runLength+2 {
+		t.Errorf("%d runs for %d minutes: %v", runs, len(minutes), err)
+	}
 }
 
 // The watermark normally keeps the file from filling up; here it is filled by
@@ -115,10 +121,10 @@ func TestLoweredLimit(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	for i := range 100 {
+	for i := 0; i < 4000; i += 40 {
 		k := &Tick{}
-		for j := range 12 {
-			k.Messages = append(k.Messages, minute(12*i+j), finding(12*i+j))
+		for j := range 40 {
+			k.Messages = append(k.Messages, tick(i+j).Messages...)
 		}
 		mustStore(t, b, k)
 	}
@@ -126,12 +132,16 @@ func TestLoweredLimit(t *testing.T) {
 		t.Fatal(err)
 	}
 	b = opened(t, path, Options{MaxSize: 2 << 20})
-	for i := range 100 {
-		mustStore(t, b, tick(1200+i))
+	_, before, err := b.Usage()
+	if err != nil || before < 2<<20 {
+		t.Fatalf("%d bytes used: not over the limit: %v", before, err)
 	}
-	_, used, err := b.Usage()
-	if err != nil || used > 2<<20 {
-		t.Errorf("%d bytes used: %v", used, err)
+	for i := range 60 {
+		mustStore(t, b, tick(4000+i))
+	}
+	size, used, err := b.Usage()
+	if err != nil || used > before-200<<10 || size > before+8*growStep {
+		t.Errorf("%d bytes, %d used, %d before: %v", size, used, before, err)
 	}
 }
 
