@@ -42,7 +42,7 @@ const quiet = 0.25 * 7.1
 // vectors plus noise. No verdict may be wrong and at most 3 % of a kind may stay
 // undetermined.
 func TestRig(t *testing.T) {
-	n := 60
+	n := 40
 	if os.Getenv("HEAVYSPOT_LONG") == "1" {
 		n = 3000
 	}
