@@ -144,49 +144,52 @@ func TestNumbersGoOnAfterDamage(t *testing.T) {
 // Damage that leaves every page readable.
 func TestWrongStructureIsSetAside(t *testing.T) {
 	whole := filledFile(t, 60)
-	for name, damage := range map[string]func(p []byte, id uint64){
-		"keys of a leaf out of order": func(p []byte, _ uint64) {
+	for name, c := range map[string]struct {
+		why    string
+		damage func(p []byte, id uint64)
+	}{
+		"keys of a leaf out of order": {"is out of order", func(p []byte, _ uint64) {
 			if n := native.Uint16(p[10:]); native.Uint16(p[8:]) == pageLeaf && n >= 2 {
 				at := pageHead + elementHead*(int(n)-1)
 				p[at+int(native.Uint32(p[at+4:]))] = 0xff // the last key stays the last
 				p[pageHead+int(native.Uint32(p[pageHead+4:]))] = 0xff
 			}
-		},
-		"keys of a branch out of order": func(p []byte, _ uint64) {
+		}},
+		"keys of a branch out of order": {"is out of order", func(p []byte, _ uint64) {
 			if native.Uint16(p[8:]) == pageBranch {
 				p[pageHead+int(native.Uint32(p[pageHead:]))] = 0xff
 			}
-		},
-		"a page in use is free": func(p []byte, id uint64) {
+		}},
+		"a page in use is free": {"free and in use", func(p []byte, id uint64) {
 			if native.Uint16(p[8:]) == pageFreelist && native.Uint16(p[10:]) > 0 {
 				native.PutUint64(p[pageHead:], id)
 			}
-		},
-		"a free page is forgotten": func(p []byte, id uint64) {
+		}},
+		"a free page is forgotten": {"neither free nor in use", func(p []byte, id uint64) {
 			if n := native.Uint16(p[10:]); native.Uint16(p[8:]) == pageFreelist && n > 0 {
 				native.PutUint16(p[10:], n-1)
 			}
-		},
-		"a branch of nothing": func(p []byte, _ uint64) {
+		}},
+		"a branch of nothing": {"a branch of 0 keys", func(p []byte, _ uint64) {
 			if native.Uint16(p[8:]) == pageBranch {
 				native.PutUint16(p[10:], 0)
 			}
-		},
-		"a branch that is its own child": func(p []byte, id uint64) {
+		}},
+		"a branch that is its own child": {"used twice", func(p []byte, id uint64) {
 			if native.Uint16(p[8:]) == pageBranch {
 				native.PutUint64(p[pageHead+8:], id)
 			}
-		},
-		"overflow past the end": func(p []byte, _ uint64) {
+		}},
+		"overflow past the end": {"past the end", func(p []byte, _ uint64) {
 			if native.Uint16(p[8:]) == pageLeaf {
 				native.PutUint32(p[12:], 1<<31)
 			}
-		},
+		}},
 	} {
 		t.Run(name, func(t *testing.T) {
 			bad := bytes.Clone(whole)
 			for at := 8192; at+4096 <= len(bad); at += 4096 {
-				damage(bad[at:at+4096], uint64(at/4096))
+				c.damage(bad[at:at+4096], uint64(at/4096))
 			}
 			if bytes.Equal(bad, whole) {
 				t.Fatal("there was nothing to damage")
@@ -195,7 +198,7 @@ func TestWrongStructureIsSetAside(t *testing.T) {
 			if err := os.WriteFile(path, bad, 0o640); err != nil {
 				t.Fatal(err)
 			}
-			if o := use(t, path).Opened(); o.SetAside == "" {
+			if o := use(t, path).Opened(); o.SetAside == "" || !strings.Contains(o.Why, c.why) {
 				t.Errorf("not set aside: %+v", o)
 			}
 		})

@@ -112,6 +112,9 @@ func TestCommitAtTheLimit(t *testing.T) {
 	if last := minutes[len(minutes)-1]; last.Sequence != 599 || minutes[0].Sequence == 1 {
 		t.Errorf("minutes from %d to %d", minutes[0].Sequence, last.Sequence)
 	}
+	if pending, err := b.Pending(0, 1<<20); err != nil || len(pending) != b.Waiting() {
+		t.Errorf("%d pending, %d counted: %v", len(pending), b.Waiting(), err)
+	}
 }
 
 // A limit that was lowered below the size of the file must not stop it.

@@ -1,6 +1,7 @@
 package mqtt
 
 import (
+	"cmp"
 	"context"
 	"fmt"
 	"io"
@@ -95,11 +96,13 @@ func until(t *testing.T, what string, ok func() bool) {
 	t.Fatalf("never happened: %s", what)
 }
 
-// recorder notes the sequence numbers of minutes in the order they arrive.
+// recorder notes the sequence numbers of one kind of message in the order they
+// arrive.
 type recorder struct {
 	server.HookBase
+	kind    string // what it notes; empty means minutes
 	mu      sync.Mutex
-	minutes []uint64
+	numbers []uint64
 }
 
 func (r *recorder) ID() string { return "recorder" }
@@ -109,24 +112,24 @@ func (r *recorder) Provides(b byte) bool { return b == server.OnPublished }
 func (r *recorder) OnPublished(_ *server.Client, pk packets.Packet) { r.take(pk.TopicName, pk.Payload) }
 
 func (r *recorder) take(topic string, payload []byte) {
-	if !strings.HasSuffix(topic, "/minute") {
+	if !strings.HasSuffix(topic, "/"+cmp.Or(r.kind, "minute")) {
 		return
 	}
 	m, err := publish.Decode(payload)
 	r.mu.Lock()
 	defer r.mu.Unlock()
 	if err != nil {
-		r.minutes = append(r.minutes, 0)
+		r.numbers = append(r.numbers, 0)
 		return
 	}
-	r.minutes = append(r.minutes, m.Head().Sequence)
+	r.numbers = append(r.numbers, m.Head().Sequence)
 }
 
 func (r *recorder) has(n int) bool {
 	r.mu.Lock()
 	defer r.mu.Unlock()
 	seen := map[uint64]bool{}
-	for _, s := range r.minutes {
+	for _, s := range r.numbers {
 		seen[s] = true
 	}
 	return len(seen) >= n
@@ -139,7 +142,7 @@ func (r *recorder) check(t *testing.T, n, window int) int {
 	r.mu.Lock()
 	defer r.mu.Unlock()
 	highest, repeats := uint64(0), 0
-	for i, s := range r.minutes {
+	for i, s := range r.numbers {
 		switch {
 		case s == highest+1:
 			highest = s

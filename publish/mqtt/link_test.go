@@ -2,6 +2,7 @@ package mqtt
 
 import (
 	"encoding/json"
+	"path/filepath"
 	"strings"
 	"testing"
 	"time"
@@ -96,6 +97,35 @@ func sequence(body string) uint64 {
 		return 0
 	}
 	return e.Sequence
+}
+
+// A finding that was left out of the outbox must not overtake the alarms that
+// wait in it: a receiver that drops lower numbers would miss them.
+func TestWhatStandsOvertakesNothing(t *testing.T) {
+	box, err := buffer.Open(filepath.Join(t.TempDir(), "box.db"), buffer.Options{OutboxMax: 3})
+	if err != nil {
+		t.Fatal(err)
+	}
+	t.Cleanup(func() { box.Close() })
+	first, second := standingTick(0, alarm.Unacknowledged).Messages, standingTick(1, alarm.Normal).Messages
+	third := standingTick(2, alarm.Unacknowledged).Messages
+	for _, messages := range [][]publish.Message{{first[1], first[0]}, {second[1], third[1]}} {
+		if err := box.Store(&buffer.Tick{Messages: messages}); err != nil {
+			t.Fatal(err)
+		}
+	}
+	standing, err := box.Standing()
+	if err != nil || len(standing) != 1 || standing[0].Sequence != 2 || box.Waiting() != 3 {
+		t.Fatalf("%v stands, %d wait: %v", standing, box.Waiting(), err)
+	}
+	rec := &recorder{kind: "finding"}
+	b := startBroker(t, "127.0.0.1:0", rec)
+	_, stop := run(t, config(b.URL()), box)
+	until(t, "an empty outbox", func() bool { return box.Waiting() == 0 })
+	stop()
+	if len(rec.numbers) != 0 {
+		t.Errorf("the finding was sent ahead")
+	}
 }
 
 // More stands than the window holds.
