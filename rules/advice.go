@@ -1,7 +1,6 @@
 package rules
 
 import (
-	"fmt"
 	"math"
 	"slices"
 	"strings"
@@ -34,7 +33,7 @@ var checks = map[Suspect]string{
 func advise(f *Finding, s *signs, p *picture) string {
 	switch f.Verdict {
 	case Quiet:
-		return quietAdvice(f)
+		return "nothing to do about unbalance"
 	case StaticUnbalance:
 		return "single-plane balance" + nearEnd(p) + "; look for deposits, wear or a lost part on the rotor first; " + safety
 	case CoupleUnbalance:
@@ -48,15 +47,6 @@ func advise(f *Finding, s *signs, p *picture) string {
 		return "do not balance; " + checks[f.Suspects[0]] + "; " + careful
 	}
 	return undeterminedAdvice(f, s)
-}
-
-// quietAdvice tells of a high overall velocity that 1x does not explain.
-func quietAdvice(f *Finding) string {
-	if f.Severity.Level == Alarm || f.Severity.Level == Trip {
-		return fmt.Sprintf("nothing to balance: 1x is quiet while the overall velocity of %s is at the %s level, so look for a cause other than unbalance",
-			f.Severity.WorstPoint, f.Severity.Level)
-	}
-	return "nothing to do about unbalance"
 }
 
 // nearEnd says where the correction plane lies when one end moves much more

@@ -7,7 +7,8 @@ type Verdict string
 
 // The verdicts.
 const (
-	// Quiet: the worst 1x is under a share of the alarm limit.
+	// Quiet: the worst 1x is under a share of the alarm limit, and no point's
+	// overall velocity has reached that limit.
 	Quiet            Verdict = "quiet"
 	StaticUnbalance  Verdict = "static-unbalance"
 	CoupleUnbalance  Verdict = "couple-unbalance"

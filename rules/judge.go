@@ -64,7 +64,9 @@ func (j *Judge) Judge(m dsp.Minute) (Finding, bool) {
 	s := measure(&j.cfg, &m, &p, j.memory.creep())
 	quiet := j.cfg.QuietShare * j.cfg.Limits.Alarm
 	f := Finding{Start: m.Start, Severity: severity(j.cfg.Limits, &m)}
-	if s.worst.ok && s.worst.x < quiet {
+	// A little 1x under a high overall velocity leaves something to diagnose.
+	loud := f.Severity.Level == Alarm || f.Severity.Level == Trip
+	if s.worst.ok && s.worst.x < quiet && !loud {
 		f.Verdict = Quiet
 		f.Evidence = []Evidence{worstEvidence(s, upTo(quiet))}
 	} else {

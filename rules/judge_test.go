@@ -88,17 +88,6 @@ func TestSeverity(t *testing.T) {
 	}
 }
 
-func TestQuietWithHighOverall(t *testing.T) {
-	s := newScene("flow", rand.New(rand.NewPCG(2, 2)))
-	for i := range s.m.Points {
-		s.m.Points[i].Order[0].RMS, s.m.Points[i].Overall = 1, 8
-	}
-	f := s.finding()
-	if f.Verdict != Quiet || f.Severity.Level != Alarm || len(f.Suspects) > 0 || !strings.Contains(f.Advice, "alarm level") {
-		t.Errorf("1x of 1 mm/s in an overall of 8: %+v", f)
-	}
-}
-
 // Three axes at one place, as a loose accelerometer gives them: whatever they
 // show, nothing is concluded.
 func TestOneBearing(t *testing.T) {
