@@ -169,6 +169,7 @@ func (e *Engine) turn(t turn) {
 // part takes a fitted part.
 func (e *Engine) part(p *part) {
 	e.series.add(&e.cfg, e.origin, p, e.tracked)
+	e.band.follow(60 * float64(p.turns) / p.length * e.cfg.RateHz)
 	e.health.look(e.fitter, p)
 }
 

@@ -228,7 +228,7 @@ func sum(x []float64) (s float64) {
 // band's filter does to the orders is known and taken off, so that near the
 // end of the band the share of 1x stays right.
 func (e *Engine) readOverall(m *Minute) {
-	low := e.band.corner / cornerShare
+	low := e.band.low
 	for i := range m.Points {
 		p := &m.Points[i]
 		if p.State != PointGood {

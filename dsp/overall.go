@@ -12,7 +12,7 @@ import (
 type band struct {
 	stride int
 	rate   float64
-	corner float64
+	low    float64 // lower end of the band, Hz
 	// Coefficients of the sections of second and first order, common to all
 	// points.
 	a1, a2, b1 float64
@@ -46,23 +46,12 @@ const (
 	slowRPM      = 600.0
 	bandHigh     = 1000.0
 	cornerShare  = 0.85
-	settlePeriod = 3.0 // of the corner
+	slowMargin   = 0.02 // so that a speed near slowRPM does not go to and fro
+	settlePeriod = 3.0  // of the corner
 )
 
 func newBand(cfg *Config) *band {
-	b := &band{stride: cfg.Channels, rate: cfg.RateHz, corner: cornerShare * bandLow}
-	if cfg.RatedRPM > 0 && cfg.RatedRPM < slowRPM {
-		b.corner = cornerShare * bandLowSlow
-	}
-	// Third-order Butterworth high pass, (s^2/(s^2+s+1)) * (s/(s+1)), by the
-	// bilinear transform with the corner prewarped. In place of the last s
-	// stands the differentiator that is left of it after integration.
-	k := math.Tan(math.Pi * b.corner / b.rate)
-	g1 := 1 / (1 + k + k*k)
-	b.a1, b.a2 = 2*(k*k-1)*g1, (1-k+k*k)*g1
-	g2 := 1 / (1 + k)
-	b.b1 = (k - 1) * g2
-	b.gain = g1 * g2 / b.rate * outer
+	b := &band{stride: cfg.Channels, rate: cfg.RateHz}
 	for _, p := range cfg.Points {
 		c := chain{channel: p.Channel, limit: p.FullScaleV}
 		if c.limit == 0 {
@@ -70,9 +59,43 @@ func newBand(cfg *Config) *band {
 		}
 		b.chain = append(b.chain, c)
 	}
-	b.restart()
 	b.clear()
+	low := bandLow
+	if cfg.RatedRPM > 0 && cfg.RatedRPM < slowRPM {
+		low = bandLowSlow
+	}
+	b.begin(low)
 	return b
+}
+
+// begin sets the lower end of the band, Hz, and what was measured aside.
+func (b *band) begin(low float64) {
+	b.low = low
+	// Third-order Butterworth high pass, (s^2/(s^2+s+1)) * (s/(s+1)), by the
+	// bilinear transform with the corner prewarped. In place of the last s
+	// stands the differentiator that is left of it after integration.
+	k := math.Tan(math.Pi * cornerShare * low / b.rate)
+	g1 := 1 / (1 + k + k*k)
+	b.a1, b.a2 = 2*(k*k-1)*g1, (1-k+k*k)*g1
+	g2 := 1 / (1 + k)
+	b.b1 = (k - 1) * g2
+	b.gain = g1 * g2 / b.rate * outer
+	b.rows = 0
+	for i := range b.chain {
+		b.chain[i].power = 0
+	}
+	b.restart()
+}
+
+// follow goes over to the band for a speed, r/min. The minute in which that
+// happens is measured from there on.
+func (b *band) follow(rpm float64) {
+	switch {
+	case b.low == bandLow && rpm < slowRPM*(1-slowMargin):
+		b.begin(bandLowSlow)
+	case b.low == bandLowSlow && rpm > slowRPM*(1+slowMargin):
+		b.begin(bandLow)
+	}
 }
 
 // restart lets the filter settle anew, after a gap.
@@ -81,7 +104,7 @@ func (b *band) restart() {
 		c := &b.chain[i]
 		c.s1, c.s2, c.r1, c.r2 = 0, 0, 0, 0
 	}
-	b.settle = int64(settlePeriod * b.rate / b.corner)
+	b.settle = int64(settlePeriod * b.rate / (cornerShare * b.low))
 	b.begun = false
 }
 

@@ -85,7 +85,7 @@ func fullScale(cfg *config.Config, dc *dsp.Config) {
 	}
 	for i := range dc.Points {
 		p := &dc.Points[i]
-		if p.Channel < len(cfg.Source.Gain) {
+		if p.FullScaleV == 0 && p.Channel < len(cfg.Source.Gain) {
 			p.FullScaleV = 1.2 / float64(cfg.Source.Gain[p.Channel])
 		}
 	}
