@@ -56,8 +56,9 @@ func newRig(cfg *config.Config) (*rig.Machine, error) {
 
 // wish is what a configuration demands of its machine.
 func wish(cfg *config.Config, kind rig.Kind) rig.Wish {
-	// buried is how far above 1x the noise must lie to hide it.
-	const buried = 2.5
+	// buried is how far above 1x the noise must lie to hide it, and beside the
+	// machine's own 1x as a share of its neighbour's.
+	const buried, beside = 2.5, 0.4
 	w := rig.Wish{
 		RPM: cfg.Machine.RatedRPM, MMS: cfg.Rig.MMS, NoiseMMS: cfg.Rig.NoiseMMS,
 		Overhung:         cfg.Machine.Rotor == "overhung",
@@ -66,7 +67,9 @@ func wish(cfg *config.Config, kind rig.Kind) rig.Wish {
 	switch {
 	case cfg.Rig.Fault == notTurnRelated:
 		w.NoiseMMS = max(w.NoiseMMS, buried*w.MMS)
-	case kind == rig.Quiet || kind == rig.NeighbourMachine:
+	case kind == rig.NeighbourMachine:
+		w.MMS *= beside
+	case kind == rig.Quiet:
 		w.MMS = 0 // as quiet as it is drawn
 	}
 	return w

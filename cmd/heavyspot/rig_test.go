@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"os"
+	"slices"
 	"strings"
 	"testing"
 
@@ -52,8 +53,11 @@ func TestRigIsAsConfigured(t *testing.T) {
 			t.Errorf("%s, %s, %g r/min: turns at %v, counter-clockwise %v", fault, rotation, rpm, m.RPM(), m.Config().Rotor.CounterClockwise)
 		}
 		low, high := 5.0, 8.0 // the main cause's level, beside a few per cent of others
-		if fault == "none" || fault == "neighbour-machine" {
+		switch fault {
+		case "none":
 			low, high = 0.1, 1.5
+		case "neighbour-machine":
+			low, high = 2, 3.5
 		}
 		if worst := levelOf(t, m, rpm); worst < low || worst > high {
 			t.Errorf("%s, %s, %g r/min: worst 1x %v mm/s, want %v to %v", fault, rotation, rpm, worst, low, high)
@@ -84,7 +88,8 @@ func TestRigRefuses(t *testing.T) {
 }
 
 // TestRigVerdicts leads every fault through converter, driver and pipeline and
-// expects its verdict after five minutes; the short run takes one fault.
+// expects its verdict after five minutes, or none with the right suspect among
+// the open ones; the short run takes one fault.
 func TestRigVerdicts(t *testing.T) {
 	faults, speeds := []string{"couple"}, []float64{1480}
 	if os.Getenv("HEAVYSPOT_LONG") == "1" {
@@ -94,11 +99,10 @@ func TestRigVerdicts(t *testing.T) {
 		for _, rpm := range speeds {
 			t.Run(fmt.Sprintf("%s %g", fault, rpm), func(t *testing.T) {
 				f := rigFinding(t, rigOf(t, fault, "counter-clockwise", rpm))
-				got := string(f.Verdict)
-				if len(f.Suspects) > 0 {
-					got += " " + string(f.Suspects[0])
-				}
-				if got != verdictOf[fault] {
+				verdict, suspect, _ := strings.Cut(verdictOf[fault], " ")
+				open := f.Verdict == rules.Undetermined && slices.Contains(f.Suspects, rules.Suspect(suspect))
+				right := string(f.Verdict) == verdict && (suspect == "" || f.Suspects[0] == rules.Suspect(suspect))
+				if !open && !right {
 					t.Errorf("%s %v, want %s\n%s", f.Verdict, f.Suspects, verdictOf[fault], evidenceTable(f.Evidence))
 				}
 			})
