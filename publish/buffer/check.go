@@ -144,12 +144,15 @@ func (c *checker) tree(id uint64, low, high []byte, depth int) error {
 }
 
 // part cuts length bytes out of a page, at a position counted from an element.
-func part(p []byte, element int, pos, length uint64) ([]byte, error) {
+// They must begin where those before them ended, at *end, as bbolt writes them:
+// so a wrong length does not pass for a longer key.
+func part(p []byte, element int, pos, length uint64, end *uint64) ([]byte, error) {
 	from := uint64(element) + pos
-	if from+length > uint64(len(p)) {
-		return nil, errors.New("points past its end")
+	if from != *end || from+length > uint64(len(p)) {
+		return nil, errors.New("is not where it should be")
 	}
-	return p[from : from+length], nil
+	*end = from + length
+	return p[from:*end], nil
 }
 
 func word(b []byte) uint64 { return uint64(native.Uint32(b)) }
@@ -159,9 +162,10 @@ func (c *checker) branch(id uint64, p []byte, n int, low, high []byte, depth int
 		return fmt.Errorf("page %d: a branch of %d keys", id, n)
 	}
 	keys, ids := make([][]byte, n), make([]uint64, n)
+	end := uint64(pageHead + n*elementHead)
 	for i := range n {
 		at := pageHead + i*elementHead
-		k, err := part(p, at, word(p[at:]), word(p[at+4:]))
+		k, err := part(p, at, word(p[at:]), word(p[at+4:]), &end)
 		if err != nil {
 			return fmt.Errorf("page %d: key %d %v", id, i, err)
 		}
@@ -187,14 +191,15 @@ func (c *checker) leaf(id uint64, p []byte, n int, low, high []byte, depth int) 
 		return fmt.Errorf("page %d: a leaf of %d keys", id, n)
 	}
 	keys := make([][]byte, n)
+	end := uint64(pageHead + n*elementHead)
 	for i := range n {
 		at := pageHead + i*elementHead
 		ksize := word(p[at+8:])
-		k, err := part(p, at, word(p[at+4:]), ksize)
+		k, err := part(p, at, word(p[at+4:]), ksize, &end)
 		if err != nil {
 			return fmt.Errorf("page %d: key %d %v", id, i, err)
 		}
-		v, err := part(p, at, word(p[at+4:])+ksize, word(p[at+12:]))
+		v, err := part(p, at, word(p[at+4:])+ksize, word(p[at+12:]), &end)
 		if err != nil {
 			return fmt.Errorf("page %d: value %d %v", id, i, err)
 		}

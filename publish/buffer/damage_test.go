@@ -160,6 +160,11 @@ func TestWrongStructureIsSetAside(t *testing.T) {
 				p[pageHead+int(native.Uint32(p[pageHead:]))] = 0xff
 			}
 		}},
+		"a key that reaches into its value": {"not where it should be", func(p []byte, _ uint64) {
+			if n := native.Uint16(p[10:]); native.Uint16(p[8:]) == pageLeaf && n > 1 && native.Uint32(p[pageHead:])&leafBucket == 0 {
+				p[pageHead+8] ^= 0x10 // the length of the first key
+			}
+		}},
 		"a page in use is free": {"free and in use", func(p []byte, id uint64) {
 			if native.Uint16(p[8:]) == pageFreelist && native.Uint16(p[10:]) > 0 {
 				native.PutUint64(p[pageHead:], id)

@@ -36,7 +36,7 @@ func TestModel(t *testing.T) {
 			case "store":
 				at += rapid.SampledFrom([]int{1, 1, 0, -50, 300}).Draw(t, "jump")
 				k := &Tick{}
-				for i := range rapid.IntRange(1, 300).Draw(t, "minutes") {
+				for i := range rapid.IntRange(1, 200).Draw(t, "minutes") {
 					m := minute(at + i)
 					m.Points = nil
 					k.Messages = append(k.Messages, m)
