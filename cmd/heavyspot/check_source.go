@@ -35,21 +35,24 @@ func (l *checkList) source(ctx context.Context, cfg *config.Config, held bool) {
 	if cfg.Reference == nil {
 		seconds = lookLonger
 	}
-	l.look(ctx, cfg, src, driver, float64(seconds))
+	l.look(ctx, cfg, src, driver, true, float64(seconds))
 }
 
 // recording looks at the first minute of a recording.
-func (l *checkList) recording(ctx context.Context, cfg *config.Config, src *recording.Source, path string) {
+func (l *checkList) recording(ctx context.Context, cfg *config.Config, path string, opt recording.Options) error {
+	src, err := openRecording(cfg, path, opt)
+	if err != nil {
+		return err
+	}
 	defer src.Close()
-	l.look(ctx, cfg, src, path, 60)
+	l.look(ctx, cfg, src, path, fromConverter(cfg, path, opt), 60)
+	return nil
 }
 
 // look reads a stream for some seconds and says what its signals are like.
-func (l *checkList) look(ctx context.Context, cfg *config.Config, src acquire.Source, name string, seconds float64) {
+func (l *checkList) look(ctx context.Context, cfg *config.Config, src acquire.Source, name string, converted bool, seconds float64) {
 	f := src.Format()
-	dc := cfg.DSP(f.RateHz, f.Channels)
-	dc.Gain = f.Response
-	fullScale(cfg, &dc)
+	dc := signalPath(cfg, f, converted)
 	engine, err := dsp.NewEngine(dc)
 	if err != nil {
 		l.step(toMend, "source", "%v", err)

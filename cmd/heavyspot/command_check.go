@@ -29,11 +29,10 @@ func (c *checkCommand) Run(env *environment) error {
 	l := &checkList{out: env.out, json: c.JSON, machine: &cfg.Machine}
 	l.facts(cfg, c.Config)
 	if c.Recording != "" {
-		src, err := openRecording(cfg, c.Recording, recording.Options{FullScaleV: c.FullScaleV})
-		if err != nil {
+		opt := recording.Options{FullScaleV: c.FullScaleV}
+		if err := l.recording(env.ctx, cfg, c.Recording, opt); err != nil {
 			return err
 		}
-		l.recording(env.ctx, cfg, src, c.Recording)
 	} else {
 		if err := cfg.CheckSource(); err != nil {
 			return usageError{err}

@@ -90,7 +90,7 @@ func newDemo(c *demoCommand, env *environment) (d *demo, err error) {
 	if d.src, err = d.stage(plan, c.Speed*demoSpeed, c.Seed); err != nil {
 		return nil, errors.Join(err, d.close())
 	}
-	if d.pipeline, err = newPipeline(d.cfg, d.src.Format(), alarms, d.delivery); err != nil {
+	if d.pipeline, err = newPipeline(d.cfg, d.src.Format(), true, alarms, d.delivery); err != nil {
 		return nil, errors.Join(err, d.close())
 	}
 	last := len(visits) - 1

@@ -42,7 +42,8 @@ func (c *replayCommand) Run(env *environment) error {
 	if err != nil {
 		return err
 	}
-	src, err := openRecording(cfg, c.Recording, recording.Options{FullScaleV: c.FullScaleV, Start: c.Start.Time})
+	opt := recording.Options{FullScaleV: c.FullScaleV, Start: c.Start.Time}
+	src, err := openRecording(cfg, c.Recording, opt)
 	if err != nil {
 		return err
 	}
@@ -58,7 +59,7 @@ func (c *replayCommand) Run(env *environment) error {
 	if err != nil {
 		return usageError{err}
 	}
-	p, err := newPipeline(cfg, src.Format(), alarms, shown, sum, flusher{out})
+	p, err := newPipeline(cfg, src.Format(), fromConverter(cfg, c.Recording, opt), alarms, shown, sum, flusher{out})
 	if err != nil {
 		return usageError{err}
 	}
@@ -125,6 +126,34 @@ func openRecording(cfg *config.Config, path string, opt recording.Options) (*rec
 		return nil, usageError{lack}
 	}
 	return nil, err
+}
+
+// fromConverter says whether a recording can come from the configured converter:
+// the rate is one of its rates, and nothing in the first minute is beyond its
+// full scale.
+func fromConverter(cfg *config.Config, path string, opt recording.Options) bool {
+	if cfg.CheckSource() != nil {
+		return false
+	}
+	src, err := openRecording(cfg, path, opt)
+	if err != nil {
+		return false
+	}
+	defer src.Close()
+	f := src.Format()
+	var b acquire.Block
+	for src.Read(context.Background(), &b) == nil && float64(b.First) < 60*f.RateHz {
+		for _, p := range cfg.Points {
+			// A little more than full scale, for the rounding of written numbers.
+			most := float32(1.0001 * converterV / float64(cfg.Source.Gain[p.Channel]))
+			for i := p.Channel; i < len(b.Volts); i += f.Channels {
+				if b.Volts[i] > most || b.Volts[i] < -most {
+					return false
+				}
+			}
+		}
+	}
+	return true
 }
 
 // checkChannels says which channel of the configuration a recording lacks.

@@ -76,7 +76,7 @@ func newWatch(cfg *config.Config, log *slog.Logger) (*watch, error) {
 	}
 	d.service = newService()
 	d.report = &reporter{log: log, publisher: d.delivery.publisher, service: d.service}
-	if d.pipeline, err = newPipeline(cfg, d.src.Format(), alarms, d.delivery, d.report); err != nil {
+	if d.pipeline, err = newPipeline(cfg, d.src.Format(), true, alarms, d.delivery, d.report); err != nil {
 		return nil, errors.Join(usageError{err}, d.close())
 	}
 	d.pipeline.onBlock = d.block

@@ -15,9 +15,13 @@ import (
 	"heavyspot/rules/alarm"
 )
 
-// leastTurns is how many turns a minute that the stream's begin or end cuts
-// short must hold to count.
-const leastTurns = 10
+const (
+	// leastTurns is how many turns a minute that the stream's begin or end cuts
+	// short must hold to count.
+	leastTurns = 10
+	// wholeSeconds is the length from which the first minute is not cut short.
+	wholeSeconds = 59.5
+)
 
 // tick is what one minute gives.
 type tick struct {
@@ -46,20 +50,18 @@ type pipeline struct {
 	sinks   []sink
 	// onBlock, if not nil, is told each block once it is through.
 	onBlock func(*acquire.Block)
-	// cut is true while the running minute did not begin with a boundary.
+	// cut is true while the running minute is the first, which may be short.
 	cut bool
 	// given counts the ticks given to the sinks and lost the missing rows.
 	given int
 	lost  int64
 }
 
-// newPipeline returns a pipeline for a stream of the given format. Whatever the
-// configuration cannot do with it is an error.
-func newPipeline(cfg *config.Config, f acquire.Format, alarms *alarm.Engine, sinks ...sink) (*pipeline, error) {
-	dc := cfg.DSP(f.RateHz, f.Channels)
-	dc.Gain = f.Response
-	fullScale(cfg, &dc)
-	e, err := dsp.NewEngine(dc)
+// newPipeline returns a pipeline for a stream that comes from the configured
+// converter or does not (see signalPath). Whatever the configuration cannot do
+// with it is an error.
+func newPipeline(cfg *config.Config, f acquire.Format, converted bool, alarms *alarm.Engine, sinks ...sink) (*pipeline, error) {
+	e, err := dsp.NewEngine(signalPath(cfg, f, converted))
 	if err != nil {
 		return nil, err
 	}
@@ -76,20 +78,22 @@ func (p *pipeline) newJudge() (err error) {
 	return err
 }
 
-// fullScale sets the voltage at which the converter of a configuration
-// saturates (1.2 V over the gain, ADS131M08 data sheet 8.5.1.9), live and in
-// recordings alike, so that both give the same readings.
-func fullScale(cfg *config.Config, dc *dsp.Config) {
-	if cfg.Source.Driver == config.DriverADXL355 {
-		return
-	}
+// signalPath is the configuration of the signal path for a stream. Where it
+// comes from the configured converter, live or recorded, that saturates at a
+// known voltage: 1.2 V over the gain (ADS131M08 data sheet 8.5.1.9).
+func signalPath(cfg *config.Config, f acquire.Format, converted bool) dsp.Config {
+	dc := cfg.DSP(f.RateHz, f.Channels)
+	dc.Gain = f.Response
 	for i := range dc.Points {
-		p := &dc.Points[i]
-		if p.FullScaleV == 0 && p.Channel < len(cfg.Source.Gain) {
-			p.FullScaleV = 1.2 / float64(cfg.Source.Gain[p.Channel])
+		if p := &dc.Points[i]; converted && p.Channel < len(cfg.Source.Gain) {
+			p.FullScaleV = converterV / float64(cfg.Source.Gain[p.Channel])
 		}
 	}
+	return dc
 }
+
+// converterV is the converter's full scale at gain 1, volts either way.
+const converterV = 1.2
 
 // run reads the source to its end or until ctx ends, and closes the last
 // minute in either case. It returns nil at the stream's end and when ctx ended.
@@ -183,6 +187,7 @@ func (p *pipeline) close() error {
 	t := p.reading(end)
 	p.minutes.advance()
 	p.cut = false
+	cut = cut && t.Minute.Seconds < wholeSeconds
 	if t.Minute.Coverage == 0 || cut && t.Minute.Speed.Turns < leastTurns {
 		return nil
 	}

@@ -10,6 +10,7 @@ import (
 	"heavyspot/acquire"
 	"heavyspot/acquire/rig"
 	"heavyspot/config"
+	"heavyspot/dsp"
 	"heavyspot/rules/alarm"
 
 	"github.com/google/go-cmp/cmp"
@@ -29,7 +30,7 @@ func newTestPipeline(t testing.TB, cfg *config.Config, f acquire.Format, sinks .
 	if err != nil {
 		t.Fatal(err)
 	}
-	p, err := newPipeline(cfg, f, a, sinks...)
+	p, err := newPipeline(cfg, f, true, a, sinks...)
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -199,6 +200,32 @@ func TestMinutes(t *testing.T) {
 				t.Errorf("minutes (-want +got):\n%s", d)
 			}
 		})
+	}
+}
+
+// TestStandingMachine checks that whole minutes of a machine that stands count,
+// and a cut one does not.
+func TestStandingMachine(t *testing.T) {
+	c := &collector{}
+	p := newTestPipeline(t, mustConfig(t, alignConfig), acquire.Format{RateHz: alignHz, Channels: 2}, c)
+	b := acquire.Block{Volts: make([]float32, 2*alignHz)}
+	for range 130 {
+		if err := p.take(&b); err != nil {
+			t.Fatal(err)
+		}
+		b.First += alignHz
+	}
+	if err := p.finish(); err != nil {
+		t.Fatal(err)
+	}
+	want := []string{"00:00:00.000 60 s unset", "00:01:00.000 60 s unset"}
+	if d := cmp.Diff(want, c.lines()); d != "" {
+		t.Errorf("minutes (-want +got):\n%s", d)
+	}
+	for _, k := range c.ticks {
+		if k.Finding != nil || k.Minute.Speed.State != dsp.Stopped {
+			t.Errorf("a standing machine is %s and has the finding %v", k.Minute.Speed.State, k.Finding)
+		}
 	}
 }
 

@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"os"
 	"path/filepath"
+	"strconv"
 	"strings"
 	"testing"
 	"time"
@@ -262,5 +263,36 @@ func TestHelp(t *testing.T) {
 		if !strings.HasPrefix(out, "Examples:\n  "+list[0]+"\n") {
 			t.Errorf("%s: the help does not begin with its examples: %s", name, out)
 		}
+	}
+}
+
+// TestForeignRecording checks that a recording which the configured converter
+// cannot have made, by its voltages, is not called clipped by its full scale.
+func TestForeignRecording(t *testing.T) {
+	loud := strings.Replace(fanConfig, "volts_per_g = 0.1", "volts_per_g = 10", 6)
+	cfg := writeFile(t, "fan.toml", loud)
+	text, err := os.ReadFile(fanRecording(t))
+	if err != nil {
+		t.Fatal(err)
+	}
+	lines := strings.SplitAfter(string(text), "\n")[30000:]
+	lines[0] = "t_s,ch0,ch1,ch2,ch3,ch4,ch5,ch6\n"
+	for i := 1; i < len(lines)-1; i++ {
+		f := strings.Split(lines[i], ",")
+		for c := 1; c <= 6; c++ {
+			v, err := strconv.ParseFloat(f[c], 64)
+			if err != nil {
+				t.Fatal(err)
+			}
+			f[c] = strconv.FormatFloat(100*v, 'g', 8, 64)
+		}
+		lines[i] = strings.Join(f[:8], ",") + "\n"
+	}
+	status, out, talk := heavyspot("replay", "-c", cfg, writeFile(t, "fan.csv", strings.Join(lines[:9000], "")))
+	if status != statusDone || !strings.Contains(out, "static-unbalance") {
+		t.Errorf("status %d\n%s%s", status, out, talk)
+	}
+	if strings.Contains(out+talk, "clipped") {
+		t.Error("points are called clipped")
 	}
 }

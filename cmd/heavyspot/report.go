@@ -4,6 +4,7 @@ import (
 	"context"
 	"fmt"
 	"log/slog"
+	"math"
 	"time"
 
 	"heavyspot/acquire"
@@ -32,12 +33,12 @@ func (r *reporter) take(t *tick) error {
 	m := &t.Minute
 	if m.Speed.State != r.speed {
 		r.speed = m.Speed.State
-		r.log.Info("Machine is "+string(r.speed), keySpeed, m.Speed.Mean)
+		r.log.Info("Machine is "+string(r.speed), keySpeed, hundredths(m.Speed.Mean))
 	}
 	r.points(m)
 	if f := t.Finding; f != nil && (f.Verdict != r.verdict || f.Severity.Level != r.level) {
 		r.verdict, r.level = f.Verdict, f.Severity.Level
-		r.log.Info("Verdict", keyVerdict, f.Verdict, keyLevel, f.Severity.Level, keyWorst, f.Severity.MMS, keyPoint, f.Severity.WorstPoint)
+		r.log.Info("Verdict", keyVerdict, f.Verdict, keyLevel, f.Severity.Level, keyWorst, hundredths(f.Severity.MMS), keyPoint, f.Severity.WorstPoint)
 	}
 	for i := range t.Events {
 		e := &t.Events[i]
@@ -50,6 +51,9 @@ func (r *reporter) take(t *tick) error {
 	r.service.status(r.line(t))
 	return nil
 }
+
+// hundredths rounds a figure for the log.
+func hundredths(x float64) float64 { return math.Round(100*x) / 100 }
 
 // points logs points whose signal can no longer be believed, or can again.
 func (r *reporter) points(m *dsp.Minute) {
