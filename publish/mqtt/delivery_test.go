@@ -26,7 +26,7 @@ func TestBrokerLateAndRestarted(t *testing.T) {
 }
 
 func TestConnectionCut(t *testing.T) {
-	const n = 2000
+	n := fewer(2000)
 	box, rec := newBox(t), &recorder{}
 	b := startBroker(t, "127.0.0.1:0", rec)
 	px := newProxy(t, listen(t), b.Addr())

@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"io"
 	"net"
+	"os"
 	"path/filepath"
 	"strings"
 	"sync"
@@ -82,6 +83,14 @@ func run(t *testing.T, cfg Config, box Outbox) (*Publisher, func()) {
 	}
 	t.Cleanup(stop)
 	return p, stop
+}
+
+// fewer is n in the long run of the tests, and less in the usual one.
+func fewer(n int) int {
+	if os.Getenv("HEAVYSPOT_LONG") == "1" {
+		return n
+	}
+	return n / 4
 }
 
 // until waits for something that must happen.

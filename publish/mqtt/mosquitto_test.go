@@ -123,7 +123,7 @@ func TestMosquittoRestarted(t *testing.T) {
 }
 
 func TestMosquittoCutAndMuted(t *testing.T) {
-	const n = 2000
+	n := fewer(2000)
 	m, box := newMosquitto(t, "allow_anonymous true"), newBox(t)
 	m.start(t)
 	rec := m.receive(t)
