@@ -29,7 +29,8 @@ const (
 	// the other's, from which, at liftingRough of 1x or more, a support that
 	// lifts is suspected (common practice: a support that opens and closes is
 	// stiff one way and soft the other, and makes harmonics in that direction).
-	oneSided, liftingRough = 3.0, 0.25
+	// hintingRough of 1x, half as one-sided, leaves it open.
+	oneSided, liftingRough, hintingRough = 3.0, 0.25, 0.3
 	// highAxial is the axial 1x against the radial one from which it needs a
 	// cause (common practice; S5 gives 0.5 for misalignment, S4 only "high").
 	highAxial, misalignedAxial = 0.3, 0.5
@@ -161,7 +162,9 @@ func (s *signs) suspicions() []suspicion {
 // A coupling makes them in one direction too, but then moves the bearings on
 // lines.
 func (s *signs) lifting() truth {
-	return all(s.rough.atLeast(liftingRough, shareGuard), s.roughRatio.atLeast(oneSided, ratioGuard*oneSided), not(s.line()))
+	sure := all(s.rough.atLeast(liftingRough, shareGuard), s.roughRatio.atLeast(oneSided, ratioGuard*oneSided))
+	hint := all(s.rough.atLeast(hintingRough, shareGuard), s.roughRatio.atLeast(oneSided/2, 0), open)
+	return all(either(sure, hint), not(s.line()))
 }
 
 // eccentric: motion on lines (common practice) without the axial motion and the

@@ -36,7 +36,7 @@ func (d *draw) addLoads() bool {
 	d.c = main
 	d.c.Faults.Flow = d.flow()
 	d.unsteadyParts()
-	return d.defines(&d.c)
+	return d.defines(&d.c) && (d.kind != Loose || d.lifts())
 }
 
 // mainCause returns the machine with the loads of its kind, not yet to scale.
