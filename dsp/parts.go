@@ -125,11 +125,14 @@ func (f *fitter) angles(row int64, t turn, c, s *[2*Orders + 1]float64) int64 {
 	sumAngles(n, complex(cos, sin), complex(dc, ds), angle+float64(n)*step, c, s)
 	at := len(f.table)
 	f.table = f.table[:at+n]
-	for i := range f.table[at:] {
+	rows := f.table[at:]
+	for i := range rows {
 		// Double and triple angles; the recurrence starts anew each turn, so
 		// that rounding does not build up.
+		t := &rows[i]
 		c2, s2 := 2*cos*cos-1, 2*sin*cos
-		f.table[at+i] = trig{cos, sin, c2, s2, cos*c2 - sin*s2, sin*c2 + cos*s2}
+		t.c1, t.s1, t.c2, t.s2 = cos, sin, c2, s2
+		t.c3, t.s3 = cos*c2-sin*s2, sin*c2+cos*s2
 		cos, sin = cos*dc-sin*ds, sin*dc+cos*ds
 	}
 	return end
