@@ -63,7 +63,7 @@ func (e *Engine) readSpeed(m *Minute, tracked bool) {
 	}
 	switch {
 	case tracked:
-	case sp.Missing+sp.Extra > 0:
+	case sp.Missing+sp.Extra > 0 || e.pulses.narrow():
 		sp.Reference = ReferenceDoubtful
 	default:
 		sp.Reference = ReferenceGood
@@ -80,7 +80,9 @@ func (e *Engine) readVectors(m *Minute, use []bool, first int, tracked bool) {
 		correction := 60 * s.relativeTo(strongest)
 		m.Speed.Mean += correction
 		m.LagFrom = m.Points[first].Name
-	} else {
+	} else if m.Speed.State == Steady {
+		// While the speed changes a lot, so does the machine's own vector, and
+		// there is no telling it from a neighbour's.
 		lines = e.nb.find(s, use, hz)
 	}
 	if cap(e.taper) < len(s.centre) {

@@ -50,6 +50,14 @@ func newPulses(ref Reference) *pulses {
 // restart forgets the pulse under way, after a gap; at is the next row.
 func (p *pulses) restart(at int64) { p.next, p.armed, p.high, p.end = at, false, false, at-1 }
 
+// narrowRows is the width under which a pulse does not reach its height behind
+// the converter's filter at every place between two samples, so that its edges
+// are located too late.
+const narrowRows = 2.5
+
+// narrow reports whether the pulses are too narrow for the sampling.
+func (p *pulses) narrow() bool { return p.width > 0 && p.width < narrowRows }
+
 // scan looks at the rows not seen yet, as far as an edge could be located, and
 // calls found with each edge's place on the sample clock in rows.
 func (p *pulses) scan(b *rows, found func(at float64)) {

@@ -22,7 +22,8 @@ type ReferenceState string
 const (
 	// ReferenceGood: every pulse where it was expected.
 	ReferenceGood ReferenceState = "good"
-	// ReferenceDoubtful: pulses were missing or extra ones were rejected.
+	// ReferenceDoubtful: pulses were missing, extra ones were rejected, or they
+	// are too narrow for the sampling.
 	ReferenceDoubtful ReferenceState = "doubtful"
 	// ReferenceNone: no usable pulses; the turn rate comes from the vibration.
 	ReferenceNone ReferenceState = "none"

@@ -156,3 +156,19 @@ func TestChanging(t *testing.T) {
 		t.Errorf("speed %+v: want from 0.55 to 1.45 of %.1f r/min", m.Speed, 60*s.hz)
 	}
 }
+
+// TestNarrowPulses: pulses too narrow for the sampling are doubtful, since their
+// edges cannot be located.
+func TestNarrowPulses(t *testing.T) {
+	for _, c := range []struct {
+		rows float64
+		want dsp.ReferenceState
+	}{{1.2, dsp.ReferenceDoubtful}, {3.2, dsp.ReferenceGood}, {8, dsp.ReferenceGood}} {
+		s := base(8)
+		s.width = c.rows * s.hz / s.rate
+		m := s.read(t)
+		if m.Speed.Reference != c.want {
+			t.Errorf("pulses of %v rows: reference %s, want %s (%+v)", c.rows, m.Speed.Reference, c.want, m.Speed)
+		}
+	}
+}

@@ -4,6 +4,7 @@ import (
 	"math"
 	"math/cmplx"
 	"slices"
+	"time"
 
 	"heavyspot/dsp"
 )
@@ -17,6 +18,9 @@ const (
 	// fewestSteps is the number of steps from minute to minute from which they
 	// tell anything.
 	fewestSteps = 3
+	// apart is how far apart two minutes may be for their phases to be compared:
+	// over a longer hole a difference is no creep.
+	apart = 2 * time.Minute
 )
 
 // memory holds the pictures of the latest steady minutes with a phase
@@ -24,6 +28,7 @@ const (
 type memory struct {
 	pictures []picture
 	rpm      []float64
+	start    []time.Time
 }
 
 // add keeps a minute and drops the oldest beyond those remembered. Without a
@@ -35,9 +40,11 @@ func (h *memory) add(m *dsp.Minute, p *picture) {
 	if len(h.rpm) == remembered {
 		h.pictures = append(h.pictures[:0], h.pictures[1:]...)
 		h.rpm = append(h.rpm[:0], h.rpm[1:]...)
+		h.start = append(h.start[:0], h.start[1:]...)
 	}
 	h.pictures = append(h.pictures, *p)
 	h.rpm = append(h.rpm, m.Speed.Mean)
+	h.start = append(h.start, m.Start)
 }
 
 // creep returns the size of the phase's steps from minute to minute, degrees:
@@ -47,7 +54,7 @@ func (h *memory) add(m *dsp.Minute, p *picture) {
 func (h *memory) creep() value {
 	var steps []value
 	for i := 1; i < len(h.rpm); i++ {
-		if math.Abs(h.rpm[i]-h.rpm[i-1]) > sameSpeed*h.rpm[i] {
+		if math.Abs(h.rpm[i]-h.rpm[i-1]) > sameSpeed*h.rpm[i] || h.start[i].Sub(h.start[i-1]).Abs() > apart {
 			continue
 		}
 		if s := step(&h.pictures[i-1], &h.pictures[i]); s.ok {

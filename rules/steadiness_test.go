@@ -3,6 +3,7 @@ package rules
 import (
 	"math/rand/v2"
 	"testing"
+	"time"
 
 	"heavyspot/dsp"
 )
@@ -11,6 +12,12 @@ import (
 // and at the next of the speeds, and returns the last finding.
 func run(t *testing.T, s *scene, turns, rpm []float64) Finding {
 	t.Helper()
+	return runEvery(t, time.Minute, s, turns, rpm)
+}
+
+// runEvery does so with the minutes a time apart.
+func runEvery(t *testing.T, every time.Duration, s *scene, turns, rpm []float64) Finding {
+	t.Helper()
 	j, err := NewJudge(s.cfg)
 	if err != nil {
 		t.Fatal(err)
@@ -18,6 +25,7 @@ func run(t *testing.T, s *scene, turns, rpm []float64) Finding {
 	var f Finding
 	for k, by := range turns {
 		m := s.changed(func(_ *Point, p *dsp.PointReading) { p.Order[0].Lag = turned(p.Order[0].Lag + by) }).m
+		m.Start = time.Date(2026, 3, 1, 6, 0, 0, 0, time.UTC).Add(time.Duration(k) * every)
 		if rpm != nil {
 			m.Speed.Mean = rpm[k]
 		}
@@ -50,6 +58,13 @@ func TestCreepingPhase(t *testing.T) {
 	}
 	if f = run(t, steadyStatic(), []float64{0, 10, 20, 30, 40}, nil); f.Verdict != Undetermined {
 		t.Errorf("10 degrees a minute, on the border: %s %v", f.Verdict, f.Suspects)
+	}
+}
+
+// Days between the minutes: dust has moved the heavy spot, and nothing creeps.
+func TestHolesAreNoCreep(t *testing.T) {
+	if f := runEvery(t, 24*time.Hour, steadyStatic(), []float64{0, 20, 40, 60, 80, 100}, nil); f.Verdict != StaticUnbalance {
+		t.Errorf("20 degrees a day: %s %v", f.Verdict, f.Suspects)
 	}
 }
 

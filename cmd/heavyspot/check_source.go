@@ -137,6 +137,8 @@ func (l *checkList) speed(cfg *config.Config, m *dsp.Minute) {
 		l.step(isNote, "speed", "the machine stands, or turns too slowly to be seen; look at the reference again when it runs")
 	case s.Reference == dsp.ReferenceGood:
 		l.step(isOK, "speed", "%.1f r/min by the phase reference, %d whole turns, every pulse in its place", s.Mean, s.Turns)
+	case s.Reference == dsp.ReferenceDoubtful && s.Missing+s.Extra == 0:
+		l.step(dataWrong, "speed", "%.1f r/min by the phase reference, whose pulses are too narrow for the sampling", s.Mean)
 	case s.Reference == dsp.ReferenceDoubtful:
 		l.step(dataWrong, "speed", "%.1f r/min by the phase reference, but %d pulses were missing and %d too many; look at the pick-up's distance, and at threshold and hysteresis", s.Mean, s.Missing, s.Extra)
 	case cfg.Reference != nil:

@@ -42,7 +42,6 @@ type sink interface {
 // code runs live, from a recording and in the demo.
 type pipeline struct {
 	engine  *dsp.Engine
-	rules   rules.Config
 	judge   *rules.Judge
 	alarms  *alarm.Engine
 	minutes minutes
@@ -65,17 +64,14 @@ func newPipeline(cfg *config.Config, f acquire.Format, converted bool, alarms *a
 	if err != nil {
 		return nil, err
 	}
-	p := &pipeline{
-		engine: e, rules: cfg.Rules(), alarms: alarms, format: f, sinks: sinks, cut: true,
-		minutes: minutes{rateHz: f.RateHz},
+	j, err := rules.NewJudge(cfg.Rules())
+	if err != nil {
+		return nil, err
 	}
-	return p, p.newJudge()
-}
-
-// newJudge begins to judge without memory of earlier minutes.
-func (p *pipeline) newJudge() (err error) {
-	p.judge, err = rules.NewJudge(p.rules)
-	return err
+	return &pipeline{
+		engine: e, judge: j, alarms: alarms, format: f, sinks: sinks, cut: true,
+		minutes: minutes{rateHz: f.RateHz},
+	}, nil
 }
 
 // signalPath is the configuration of the signal path for a stream. Where it
@@ -86,7 +82,10 @@ func signalPath(cfg *config.Config, f acquire.Format, converted bool) dsp.Config
 	dc.Gain = f.Response
 	for i := range dc.Points {
 		if p := &dc.Points[i]; converted && p.Channel < len(cfg.Source.Gain) {
-			p.FullScaleV = converterV / float64(cfg.Source.Gain[p.Channel])
+			v := converterV / float64(cfg.Source.Gain[p.Channel])
+			if p.FullScaleV == 0 || v < p.FullScaleV {
+				p.FullScaleV = v // the converter before the sensor
+			}
 		}
 	}
 	return dc
@@ -176,9 +175,7 @@ func (p *pipeline) bridge(row int64) error {
 		return nil
 	}
 	p.engine.Close(m.start, time.Time{}, false)
-	// The judge compares phases from one minute to the next; over a hole of
-	// minutes, let alone days, a difference is no creep.
-	return p.newJudge()
+	return nil
 }
 
 // close ends the running minute at its boundary.

@@ -52,20 +52,22 @@ func instrument(c *rig.Config, cfg *config.Config) error {
 	if c.Reference != nil {
 		place = c.Reference.PickupDeg
 	}
-	c.Reference = pickup(cfg.Reference, place)
+	c.Reference = pickup(cfg, place)
 	return nil
 }
 
 // pickup returns a phase reference at a place, degrees, whose pulses cross the
-// configured levels.
-func pickup(r *config.Reference, place float64) *rig.Reference {
+// configured levels and are wide enough for the configured rate at rated speed.
+func pickup(cfg *config.Config, place float64) *rig.Reference {
+	r := cfg.Reference
 	if r == nil {
 		return nil
 	}
+	width := max(40, 4*360/cfg.Source.RateHz*cfg.Machine.RatedRPM/60)
 	// Well past the levels, but within the converter's range.
 	reach := max(0.3, 2*r.HysteresisV)
 	return &rig.Reference{
-		Channel: r.Channel, PickupDeg: place, WidthDeg: 40, Falling: r.Edge == "falling",
+		Channel: r.Channel, PickupDeg: place, WidthDeg: min(width, 200), Falling: r.Edge == "falling",
 		LowV: math.Max(r.ThresholdV-reach, -1.15), HighV: math.Min(r.ThresholdV+reach, 1.15),
 		JitterDeg: 0.01, NoiseV: 1e-5,
 	}

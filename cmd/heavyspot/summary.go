@@ -90,7 +90,7 @@ func (s *summary) doubts(cfg *config.Config) []string {
 		}
 	}
 	if s.doubtful > 0 {
-		list = append(list, fmt.Sprintf("the phase reference had missing or extra pulses in %d of %s", s.doubtful, several(s.minutes, "minute")))
+		list = append(list, fmt.Sprintf("the phase reference had missing, extra or too narrow pulses in %d of %s", s.doubtful, several(s.minutes, "minute")))
 	}
 	if s.none > 0 && cfg.Reference != nil {
 		list = append(list, fmt.Sprintf("the phase reference gave no usable pulses in %d of %s", s.none, several(s.minutes, "minute")))

@@ -154,7 +154,11 @@ func notes(m *dsp.Minute) []string {
 			list = append(list, fmt.Sprintf("%s is %s", p.Name, p.State))
 		}
 	}
-	if s := &m.Speed; s.Reference == dsp.ReferenceDoubtful {
+	switch s := &m.Speed; {
+	case s.Reference != dsp.ReferenceDoubtful:
+	case s.Missing+s.Extra == 0:
+		list = append(list, "phase reference is doubtful: its pulses are too narrow for the sampling")
+	default:
 		list = append(list, fmt.Sprintf("phase reference is doubtful: %d pulses missing, %d extra", s.Missing, s.Extra))
 	}
 	if m.LagFrom != "" {
