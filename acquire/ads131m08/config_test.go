@@ -6,7 +6,7 @@ import (
 	"testing"
 )
 
-// Register values of converters.md 1.8, there from the data sheet.
+// Register values for 8.192 MHz from the data sheet (SBAS950B, CLOCK register).
 func TestClockRegister(t *testing.T) {
 	for _, v := range []struct {
 		rate    float64
@@ -90,8 +90,8 @@ func TestValidate(t *testing.T) {
 	}
 }
 
-// Table 1.6 of converters.md, computed there from the structure of the filter
-// (clock 8.192 MHz): delay, corner, gains at 5, 25, 60 and 120 Hz.
+// Computed beforehand from the structure of the filter (data sheet SBAS950B,
+// section 8.3.7, clock 8.192 MHz): delay, corner, gains at 5, 25, 60 and 120 Hz.
 func TestResponse(t *testing.T) {
 	for _, v := range []struct {
 		osr        int

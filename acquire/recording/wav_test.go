@@ -123,7 +123,7 @@ func TestWAVChunks(t *testing.T) {
 		"chunks behind":   riff(format, data, chunk("LIST", []byte("INFO"))),
 		"stream":          riff(format, open(math.MaxUint32)),
 		"rf64":            rf64,
-		"broken list":     riff(chunk("LIST", []byte("INFOICRD\xff\xff\xff\xff2026")), chunk("LIST", []byte("INFOICRD\x04\x00\x00\x002026xxx")), format, data),
+		"broken list":     riff(chunk("LIST", []byte("INFOICRD\xff\xff\xff\xff2026")), chunk("LIST", []byte("INFOICRD\x04\x00\x00\x002026yyy")), format, data),
 	} {
 		s, err := openBytes(file, Options{})
 		if err != nil {

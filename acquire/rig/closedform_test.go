@@ -45,7 +45,9 @@ func near(t *testing.T, what string, got, want, tolerance float64) {
 	}
 }
 
-// jeffcottTable is standards.md 9.1 (formula: NPTEL module 2 lecture 2).
+// jeffcottTable is the Jeffcott rotor, A/e and lag against r for a damping ratio
+// of 0.05 and of 0.10, recomputed from the formula in R. Tiwari, Rotor Dynamics
+// (NPTEL course, IIT Guwahati), module 2.
 var jeffcottTable = []struct{ r, a05, lag05, a10, lag10 float64 }{
 	{0.2, 0.04166, 1.193, 0.04163, 2.386},
 	{0.5, 0.33260, 3.814, 0.33041, 7.595},
@@ -105,8 +107,9 @@ func TestTimeDomainEqualsJeffcott(t *testing.T) {
 	}
 }
 
-// TestRaoWhirl is the posted problem of standards.md 9.2; the values were
-// recomputed there from the closed form.
+// TestRaoWhirl is a whirling problem after S. S. Rao, Mechanical Vibrations,
+// chapter 9 (k 3.75 MN/m, 60 kg, e 2 mm, 3600 r/min, zeta 0.05); the values were
+// recomputed from the closed form.
 func TestRaoWhirl(t *testing.T) {
 	const k, m = 3.75e6, 60.0
 	c := jeffcott(0)
@@ -134,8 +137,8 @@ func cantilever(ei, l, mass, id float64) Config {
 	}
 }
 
-// TestCantilever is NPTEL module 2 lecture 3 example 2.9 (standards.md 9.2): a
-// point mass at the tip.
+// TestCantilever is example 2.9 of R. Tiwari, Rotor Dynamics (NPTEL course): a
+// point mass at the tip; the frequency was recomputed from the printed data.
 func TestCantilever(t *testing.T) {
 	ei := 2.1e11 * 4.908739e-10
 	c := cantilever(ei, 0.2, 1, 1e-9)
@@ -146,7 +149,8 @@ func TestCantilever(t *testing.T) {
 	near(t, "natural frequency, r/min", list[0], 1877.507, 2e-3)
 }
 
-// TestOverhungDisc is standards.md 9.3 (form of Den Hartog): ratios to the point
+// TestOverhungDisc is the overhung thin disc in the form of Den Hartog, values
+// recomputed from D K^4 + (4-12D) K^2 - 12 = 0 and its kin: ratios to the point
 // mass's frequency. A critical speed is where a natural frequency equals the
 // speed; unbalance excites the forward one and no backward one.
 func TestOverhungDisc(t *testing.T) {
@@ -188,8 +192,9 @@ func TestOverhungDisc(t *testing.T) {
 	}
 }
 
-// TestSweepThroughCritical is standards.md 9.4: run-up from r 0.5 to 1.8 and run-down
-// back, step 0.02, from the steady response.
+// TestSweepThroughCritical is the run-up of a Jeffcott rotor from r 0.5 to 1.8 and
+// the run-down back, from the steady response, computed beforehand with a fixed
+// step of 0.02/w_n; compare Baker, ASME J. Appl. Mech. 6(4):A145, 1939.
 func TestSweepThroughCritical(t *testing.T) {
 	oneGoroutine(t)
 	for _, row := range []struct{ zeta, a, up, upAt, down, downAt float64 }{

@@ -77,8 +77,8 @@ func TestSeverityAndClearance(t *testing.T) {
 	}
 }
 
-// TestOverhungAxialInPhase is common practice's mark of an overhung rotor
-// (standards.md section 5). No draw is rejected for its axial phase.
+// TestOverhungAxialInPhase is common practice's mark of an overhung rotor. No
+// draw is rejected for its axial phase.
 func TestOverhungAxialInPhase(t *testing.T) {
 	each(t, OverhungRotor, func(c Case) {
 		if d := ends(c.Points, Axial); d > 30 {
@@ -87,8 +87,8 @@ func TestOverhungAxialInPhase(t *testing.T) {
 	})
 }
 
-// TestBentShaftAxialOpposed is the mark of a bent shaft (standards.md section 5,
-// S4): axial opposed, radial in phase. It looks at draws before any is rejected for it.
+// TestBentShaftAxialOpposed is the mark of a bent shaft (published student
+// slides on bent shafts, +-30 degrees): axial opposed, radial in phase. It looks at draws before any is rejected for it.
 func TestBentShaftAxialOpposed(t *testing.T) {
 	r := newRand(1)
 	n, opposed := 0, 0

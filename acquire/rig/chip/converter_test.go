@@ -35,8 +35,9 @@ func TestKernelSum(t *testing.T) {
 	}
 }
 
-// The gains of converters.md table 1.6 at 5, 25, 60 and 120 Hz, computed there
-// from the structure of the filter (clock 8.192 MHz).
+// The gains at 5, 25, 60 and 120 Hz by oversampling ratio, computed beforehand
+// from the structure of the filter (ADS131M08 data sheet SBAS950B, section 8.3.7
+// and table 8-2, clock 8.192 MHz).
 var droop = map[int][4]float64{
 	128:   {1.00000, 1.00000, 0.99998, 0.99993},
 	256:   {1.00000, 0.99999, 0.99993, 0.99972},
