@@ -116,7 +116,8 @@ func (b *Buffer) LastMinutes(n int) ([]*publish.Minute, error) {
 func (b *Buffer) back(tx *bbolt.Tx, s *shelf, before uint64, n int) ([]Record, uint64) {
 	var got []Record
 	c := tx.Bucket(s.records).Cursor()
-	k, v := c.Seek(key(before))
+	k, _ := c.Seek(key(before))
+	var v []byte
 	if k == nil {
 		k, v = c.Last()
 	} else {
