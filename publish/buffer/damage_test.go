@@ -78,9 +78,6 @@ func use(t *testing.T, path string) *Buffer {
 	if _, err := b.Standing(); err != nil {
 		t.Error(err)
 	}
-	if _, err := b.LastMinutes(100); err != nil {
-		t.Error(err)
-	}
 	return b
 }
 

@@ -3,7 +3,6 @@ package buffer
 import (
 	"bytes"
 	"fmt"
-	"slices"
 	"time"
 
 	"go.etcd.io/bbolt"
@@ -83,59 +82,6 @@ func (b *Buffer) page(tx *bbolt.Tx, s *shelf, at, end uint64, from, to int64) ([
 		return got, end
 	}
 	return got, number(k)
-}
-
-// LastMinutes returns the newest minutes, n at most, oldest first.
-func (b *Buffer) LastMinutes(n int) ([]*publish.Minute, error) {
-	s := shelfOf(publish.KindMinute)
-	var out []*publish.Minute
-	for before := uint64(1<<64 - 1); len(out) < n; {
-		var got []Record
-		err := b.view(func(tx *bbolt.Tx) error {
-			got, before = b.back(tx, s, before, min(page, n-len(out)))
-			return nil
-		})
-		if err != nil {
-			return nil, err
-		}
-		for _, r := range got {
-			if m, err := publish.Decode(r.JSON); err == nil {
-				out = append(out, m.(*publish.Minute))
-			}
-		}
-		if before == 0 {
-			break
-		}
-	}
-	slices.Reverse(out)
-	return out, nil
-}
-
-// back reads the n records below a sequence number, newest first, and returns
-// where to go on, 0 at the end.
-func (b *Buffer) back(tx *bbolt.Tx, s *shelf, before uint64, n int) ([]Record, uint64) {
-	var got []Record
-	c := tx.Bucket(s.records).Cursor()
-	k, _ := c.Seek(key(before))
-	var v []byte
-	if k == nil {
-		k, v = c.Last()
-	} else {
-		k, v = c.Prev()
-	}
-	for ; k != nil && n > 0; k, v = c.Prev() {
-		n--
-		before = number(k)
-		if r, err := decode(s.kind, number(k), v); err == nil {
-			got = append(got, r)
-		} else {
-			b.damaged.Add(1)
-		}
-	}
-	if k == nil {
-		return got, 0
-	}
-	return got, before
 }
 
 // AlarmState returns the stored state of the alarm engine, nil when there is

@@ -87,16 +87,6 @@ func compare(t *rapid.T, b *Buffer, all, waiting []Record) {
 	if !slices.Equal(sequences(got), sequences(want)) {
 		t.Fatalf("from %v to %v: %v, want %v", from, to, sequences(got), sequences(want))
 	}
-	n := rapid.IntRange(0, 400).Draw(t, "last")
-	last, err := b.LastMinutes(n)
-	if err != nil || len(last) != min(n, len(all)) {
-		t.Fatalf("%d of the last %d of %d: %v", len(last), n, len(all), err)
-	}
-	for i, m := range last {
-		if w := all[len(all)-len(last)+i].Sequence; m.Sequence != w {
-			t.Fatalf("last minute %d is %d, want %d", i, m.Sequence, w)
-		}
-	}
 }
 
 func TestStanding(t *testing.T) {
