@@ -28,6 +28,9 @@ type place struct {
 	overall, wander float64
 }
 
+// harmonics returns the amplitude of 2x and 3x together, mm/s rms.
+func (p *place) harmonics() float64 { return math.Hypot(cmplx.Abs(p.z[1]), cmplx.Abs(p.z[2])) }
+
 // amplitude returns the 1x amplitude, mm/s rms; 0 when the point is not good.
 func (p *place) amplitude() float64 { return cmplx.Abs(p.z[0]) }
 

@@ -21,7 +21,7 @@ func (s *signs) evidence(v Verdict, missing *[2][3]string) []Evidence {
 		evidence("1x-share", s.share, "", from(leastShare), "", noVibration),
 		evidence("2x-to-1x", s.second, "", upTo(most2x), "", noVibration),
 		evidence("3x-to-1x", s.third, "", upTo(most2x), "", noVibration),
-		evidence("one-direction-harmonics-to-1x", s.rough, "", s.roughRange(), "", noVibration),
+		evidence("one-direction-harmonics-to-1x", s.roughest, "", upTo(hintingRough), "", noVibration),
 		evidence("neighbour-to-1x", s.neighbour, "", upTo(1), "", noVibration),
 	}
 	for b := range s.turning {
@@ -35,15 +35,6 @@ func (s *signs) evidence(v Verdict, missing *[2][3]string) []Evidence {
 	return append(list,
 		evidence("phase-wander", s.wander, "deg", upTo(mostWander), "", noVibration),
 		evidence("phase-creep", s.creep, "deg per minute", upTo(mostCreep), "", s.noCreep()))
-}
-
-// roughRange allows what the orders may have together, and less when it is one
-// direction's alone.
-func (s *signs) roughRange() bound {
-	if s.roughRatio.atLeast(oneSided, ratioGuard*oneSided) == no {
-		return upTo(2 * most2x)
-	}
-	return upTo(liftingRough)
 }
 
 func (s *signs) noCreep() string {

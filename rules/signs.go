@@ -17,10 +17,10 @@ type signs struct {
 	share value
 	// second and third are the amplitudes of 2x and 3x against 1x over all points.
 	second, third value
-	// rough is the amplitude of 2x and 3x together against 1x in the radial
-	// direction that has more of them, and roughRatio that amplitude against the
-	// other direction's.
-	rough, roughRatio value
+	// rough holds the harmonics at each radial point of a bearing that moves
+	// much; roughest is the largest of them against 1x.
+	rough    []roughness
+	roughest value
 	// neighbour is the strongest line beside 1x against 1x, over the radial points.
 	neighbour value
 	// turning is by how much horizontal lags vertical at each bearing in the
@@ -96,7 +96,7 @@ func (s *signs) orders(p *picture) {
 		s.share = value{x: radial / overall, ok: true}
 	}
 	s.second, s.third = harmonic(p, 2), harmonic(p, 3)
-	s.roughness(p)
+	s.harmonics(p)
 	if na < len(p.at) {
 		return // a bearing that floats axially shows little, whatever the cause
 	}
@@ -114,30 +114,33 @@ func harmonic(p *picture, order int) value {
 	return value{x: math.Sqrt(other / first), ok: first > 0}
 }
 
-// roughness measures the harmonics in each radial direction on its own.
-func (s *signs) roughness(p *picture) {
-	var harmonics, first [2]float64
-	for d := Vertical; d <= Horizontal; d++ {
-		for order := 2; order <= dsp.Orders; order++ {
-			sum, _ := p.power(order, d)
-			harmonics[d] += sum
+// roughness is the amplitude of 2x and 3x together at a radial point, against
+// its 1x and against the other direction's at the same bearing.
+type roughness struct{ toFirst, toOther value }
+
+// harmonics measures them. A bearing that hardly moves is left out.
+func (s *signs) harmonics(p *picture) {
+	radial, _ := p.power(1, Vertical, Horizontal)
+	for b := range p.at {
+		v, h := &p.at[b][Vertical], &p.at[b][Horizontal]
+		if !v.good || !h.good || sq(v.amplitude())+sq(h.amplitude()) < calm*radial {
+			continue
 		}
-		first[d], _ = p.power(1, d)
-	}
-	if first[Vertical] == 0 || first[Horizontal] == 0 {
-		return
-	}
-	d := Vertical
-	if harmonics[Horizontal]/first[Horizontal] > harmonics[Vertical]/first[Vertical] {
-		d = Horizontal
-	}
-	s.rough = value{x: math.Sqrt(harmonics[d] / first[d]), ok: true}
-	if harmonics[d] > 0 {
-		// The floor keeps a harmonic of zero from making the ratio infinite.
-		other := max(harmonics[1-d], 1e-4*harmonics[d])
-		s.roughRatio = value{x: math.Sqrt(harmonics[d] / other), ok: true}
-	} else {
-		s.roughRatio = value{x: 1, ok: true}
+		for d, at := range [2]*place{v, h} {
+			if !(at.amplitude() > 0) {
+				continue
+			}
+			other := [2]*place{h, v}[d].harmonics()
+			r := roughness{
+				toFirst: value{x: at.harmonics() / at.amplitude(), ok: true},
+				// The floor keeps a harmonic of zero from making the ratio infinite.
+				toOther: value{x: at.harmonics() / max(other, 0.01*at.harmonics(), 1e-9), ok: true},
+			}
+			s.rough = append(s.rough, r)
+			if r.toFirst.x >= s.roughest.x {
+				s.roughest = r.toFirst
+			}
+		}
 	}
 }
 

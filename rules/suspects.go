@@ -25,12 +25,12 @@ const (
 	// practice, to be given low weight); some2x and some3x are seen beside
 	// other signs (S4: 2x is 30 to 200 % of 1x with a bent shaft).
 	most2x, some2x, some3x, double2x = 0.5, 0.3, 0.3, 1.0
-	// oneSided is the amplitude of the harmonics in one radial direction against
-	// the other's, from which, at liftingRough of 1x or more, a support that
-	// lifts is suspected (common practice: a support that opens and closes is
-	// stiff one way and soft the other, and makes harmonics in that direction).
-	// hintingRough of 1x, half as one-sided, leaves it open.
-	oneSided, liftingRough, hintingRough = 3.0, 0.25, 0.3
+	// oneSided is the amplitude of the harmonics in one radial direction of a
+	// bearing against the other's, from which, at liftingRough of 1x or more, a
+	// support that lifts is suspected (common practice: a support that opens and
+	// closes is stiff one way and soft the other, and makes harmonics in that
+	// direction). hintingRough, and half as one-sided, leaves it open.
+	oneSided, liftingRough, hintingRough = 2.0, 0.35, 0.3
 	// highAxial is the axial 1x against the radial one from which it needs a
 	// cause (common practice; S5 gives 0.5 for misalignment, S4 only "high").
 	highAxial, misalignedAxial = 0.3, 0.5
@@ -162,9 +162,13 @@ func (s *signs) suspicions() []suspicion {
 // A coupling makes them in one direction too, but then moves the bearings on
 // lines.
 func (s *signs) lifting() truth {
-	sure := all(s.rough.atLeast(liftingRough, shareGuard), s.roughRatio.atLeast(oneSided, ratioGuard*oneSided))
-	hint := all(s.rough.atLeast(hintingRough, shareGuard), s.roughRatio.atLeast(oneSided/2, 0), open)
-	return all(either(sure, hint), not(s.line()))
+	t := no
+	for _, r := range s.rough {
+		sure := all(r.toFirst.atLeast(liftingRough, ratioGuard), r.toOther.atLeast(oneSided, ratioGuard*oneSided))
+		hint := all(r.toFirst.atLeast(hintingRough, ratioGuard), r.toOther.atLeast(1+(oneSided-1)/2, ratioGuard), open)
+		t = either(t, sure, hint)
+	}
+	return all(t, not(s.line()))
 }
 
 // eccentric: motion on lines (common practice) without the axial motion and the
