@@ -55,7 +55,7 @@ const scatter = 12
 
 // newDraft returns plain static unbalance on unequal supports.
 func newDraft(r *rand.Rand, sense float64) *draft {
-	d := &draft{second: uniform(r, 0, 0.2), third: uniform(r, 0, 0.12), rest: uniform(r, 0.05, 0.5), wander: uniform(r, 0, 3)}
+	d := &draft{second: uniform(r, 0, 0.2), third: uniform(r, 0, 0.12), rest: uniform(r, 0.05, 0.5), wander: uniform(r, 0, 0.9*someWander)}
 	size := uniform(r, 4, 25) // above the quiet level with the lower end factor
 	base := uniform(r, 0, 360)
 	high := uniform(r, 0.6, 1.6)

@@ -125,3 +125,19 @@ func TestMemoryBounded(t *testing.T) {
 		t.Errorf("after %d steady minutes: %s %v", remembered, f.Verdict, f.Suspects)
 	}
 }
+
+// A lag that wanders a little is left open until it has been seen to stay where
+// it is from minute to minute.
+func TestLittleWander(t *testing.T) {
+	s := steadyStatic()
+	s.wander(3)
+	if f := run(t, s, []float64{0}, nil); f.Verdict != Undetermined || len(f.Suspects) != 1 || f.Suspects[0] != RubOrLooseRotor {
+		t.Errorf("first minute: %s %v", f.Verdict, f.Suspects)
+	}
+	if f := run(t, s, []float64{0, 1, 0, 1, 0}, nil); f.Verdict != StaticUnbalance {
+		t.Errorf("fifth minute: %s %v", f.Verdict, f.Suspects)
+	}
+	if f := run(t, s, []float64{0, 20, 40, 60, 80}, nil); f.Verdict != NotUnbalance {
+		t.Errorf("creeping: %s %v", f.Verdict, f.Suspects)
+	}
+}

@@ -52,6 +52,9 @@ const (
 	// mostWander is the unsteadiness of the lag in a minute, and mostCreep its
 	// step from minute to minute, up to which it is steady (common practice).
 	mostWander, mostCreep = 5.0, 10.0
+	// someWander leaves the lag's steadiness open while it has not been seen
+	// from minute to minute (common practice).
+	someWander = 2.0
 )
 
 // Guards: the distance from a border, beyond the uncertainty, within which a
@@ -108,7 +111,8 @@ func (s *signs) line() truth {
 func (s *signs) unsteady() truth {
 	creep := s.creep.atLeast(mostCreep, steadyGuard)
 	if !s.creep.ok {
-		creep = no // the minute itself decides until there is a memory
+		// The minute itself decides until there is a memory, more cautiously.
+		creep = all(s.wander.atLeast(someWander, 0), open)
 	}
 	t := either(s.wander.atLeast(mostWander, steadyGuard), creep)
 	if !s.referenced {
