@@ -13,7 +13,10 @@ import (
 // the amplitude 1.2 % away, and in a ramp.
 func TestCramerRao(t *testing.T) {
 	trials := 8
-	if os.Getenv("HEAVYSPOT_LONG") == "1" {
+	switch {
+	case raceDetector:
+		t.Skip("one goroutine: nothing to find for the race detector")
+	case os.Getenv("HEAVYSPOT_LONG") == "1":
 		trials = 60
 	}
 	for _, c := range []struct {

@@ -86,6 +86,9 @@ func minutesOf(t *testing.T, c rig.Config, seed uint64, n int, seconds float64) 
 // response, no verdict may be wrong, and few may stay undetermined.
 func TestMachines(t *testing.T) {
 	n := 1
+	if raceDetector {
+		t.Skip("machines share nothing: nothing to find for the race detector")
+	}
 	if s := os.Getenv("HEAVYSPOT_MACHINES"); s != "" {
 		n, _ = strconv.Atoi(s)
 	}

@@ -112,7 +112,7 @@ var faultRanges = struct {
 	loss:              span{0.3, 0.7},
 	lift:              span{0.2, 0.7}, // lift over the amplitude without lifting
 	unsteady:          span{0.2, 0.5},
-	harmonics:         span{0.35, 3}, // 2x to 4x against 1x, vertical at the loose end
+	harmonics:         span{0.45, 3}, // 2x to 4x against 1x, vertical at the loose end
 	creep:             span{20, 180}, // degrees a minute, either way
 	walk:              span{20, 60},  // degrees in a minute
 	half:              span{0.02, 0.1},
