@@ -132,7 +132,11 @@ func (m *Machine) settle(omega float64) error {
 func (m *Machine) Channels() int { return m.front.channels }
 
 // StepHz returns the number of steps of signal per second.
-func (m *Machine) StepHz() float64 { return m.config.StepHz }
+func (m *Machine) StepHz() float64 {
+	m.mu.Lock()
+	defer m.mu.Unlock()
+	return m.config.StepHz
+}
 
 // Next writes the mean volts of every input over the next 1/StepHz seconds to
 // dst, which must hold Channels values.

@@ -20,7 +20,7 @@ func (d *draw) lifts() bool {
 	if err != nil {
 		return false
 	}
-	const settleTurns, turns = 30, 40
+	const settleTurns, turns = 12, 16
 	steps := int(turns * 60 / c.Drive.RPM * c.StepHz)
 	row := make([]float32, 1)
 	for range int(settleTurns * 60 / c.Drive.RPM * c.StepHz) {
