@@ -116,8 +116,12 @@ var kinds = map[rules.Verdict]string{
 	rules.OverhungUnbal:    "unbalance of the overhung rotor",
 }
 
+// countedSeconds is the length from which a minute counts in a row of minutes;
+// the first and the last of a run may be much shorter.
+const countedSeconds = 50.0
+
 // unbalance observes one of the two unbalance alarms. A verdict that is
-// undetermined neither brings nor clears it.
+// undetermined, or comes from a part of a minute, neither brings nor clears it.
 func (e *Engine) unbalance(m *dsp.Minute, f *rules.Finding, n Name) observation {
 	o := observation{alarm: n, priority: Low, unit: mms, after: e.cfg.UnbalanceMinutes, until: e.cfg.ClearMinutes}
 	worst := ""
@@ -127,7 +131,7 @@ func (e *Engine) unbalance(m *dsp.Minute, f *rules.Finding, n Name) observation 
 		}
 	}
 	o.limit = e.cfg.QuietShare * e.cfg.AlarmMMS
-	if f == nil || m.Speed.State != dsp.Steady || f.Verdict == rules.Undetermined {
+	if f == nil || m.Speed.State != dsp.Steady || f.Verdict == rules.Undetermined || m.Seconds < countedSeconds {
 		o.cause = unknown
 		return o
 	}
