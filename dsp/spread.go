@@ -113,7 +113,7 @@ func split(residual []complex128, v complex128) (along, across float64) {
 	return 0.5, 0.5
 }
 
-// wander returns the angular deviation, degrees, of the vectors' lag over
+// wander returns the angular deviation, degrees, of the vector's lag over
 // stretches of a few seconds, with what the noise from part to part explains
 // taken off. residual is what the fit left around the vector v.
 func wander(residual []complex128, v complex128, perStretch int) float64 {
@@ -121,22 +121,24 @@ func wander(residual []complex128, v complex128, perStretch int) float64 {
 		return 0
 	}
 	unit := cmplx.Conj(v) / complex(cmplx.Abs(v)*cmplx.Abs(v), 0)
-	var across, noise, n float64
+	var lags Directions
+	var noise, steps float64
 	for k := 0; k+perStretch <= len(residual); k += perStretch {
-		sum, prev := 0.0, 0.0
+		var sum complex128
 		for i, r := range residual[k : k+perStretch] {
-			y := imag(r * unit)
+			sum += r
 			if i > 0 {
-				noise += (y - prev) * (y - prev) / 2 / float64(perStretch-1)
+				d := imag((r - residual[k+i-1]) * unit)
+				noise += d * d / 2
+				steps++
 			}
-			sum, prev = sum+y, y
 		}
-		mean := sum / float64(perStretch)
-		across += mean * mean
-		n++
+		lags.Add(-cmplx.Phase(1+sum*unit/complex(float64(perStretch), 0))*180/math.Pi, 1)
 	}
-	if perStretch == 1 {
-		return math.Sqrt(across/n) * 180 / math.Pi
+	deviation := lags.Deviation()
+	if steps == 0 {
+		return deviation
 	}
-	return math.Sqrt(max(0, across/n-noise/n/float64(perStretch))) * 180 / math.Pi
+	noise *= 180 / math.Pi * 180 / math.Pi / steps / float64(perStretch)
+	return math.Sqrt(max(0, deviation*deviation-noise))
 }

@@ -33,7 +33,18 @@ func evidenceTable(list []rules.Evidence) string {
 		if e.Unit != "" {
 			expected = e.Unit + ", " + expected
 		}
-		row(holds, e.Test, fmt.Sprintf("%.4g", e.Measured), expected)
+		row(holds, e.Test, measured(&e), expected)
 	}
 	return b.String()
+}
+
+// measured is the measured value with the decimals that mean something.
+func measured(e *rules.Evidence) string {
+	switch {
+	case e.Unit == "":
+		return fmt.Sprintf("%.3f", e.Measured)
+	case strings.HasPrefix(e.Unit, "deg"):
+		return fmt.Sprintf("%.1f", e.Measured)
+	}
+	return fmt.Sprintf("%.2f", e.Measured)
 }

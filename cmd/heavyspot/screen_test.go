@@ -60,7 +60,7 @@ func TestEvidenceTable(t *testing.T) {
 	})
 	plainOutput(t, got)
 	for _, text := range []string{
-		"  yes    larger-to-smaller-non-drive-end             12.35  at least 1 while",
+		"  yes    larger-to-smaller-non-drive-end            12.346  at least 1 while",
 		"  NO     horizontal-behind-vertical-non-drive-end   -123.5  deg, 30 to 150 in",
 		"  -      axial-ends-phase                                -  not tested: no point",
 	} {
