@@ -79,12 +79,7 @@ func newTracker(cfg *Config, buf *rows) *tracker {
 // restart drops the line and waits for a window of new rows.
 func (t *tracker) restart() {
 	t.hz, t.seen = 0, 0
-	t.next = t.buf.end() + int64(len(t.window))
-	if kept := t.buf.base + int64(len(t.window)); t.buf.end() > kept {
-		t.next = t.buf.end()
-	} else {
-		t.next = max(kept, t.buf.end())
-	}
+	t.next = max(t.buf.end(), t.buf.base+int64(len(t.window)))
 }
 
 // scan looks at each window that has become full and passes on the turns up to
